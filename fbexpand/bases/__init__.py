@@ -1,0 +1,1 @@
+"""Bases: eigenfunctions of the radial Laplacian, their roots and norms."""

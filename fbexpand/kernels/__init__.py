@@ -1,0 +1,1 @@
+"""Compiled loops: numba, math and NumPy arrays only; no validation, no Python objects."""

@@ -1,0 +1,1 @@
+"""Profiles: callables and tables, resolved into polynomial panels."""

@@ -1,0 +1,1 @@
+"""Bessel functions, their zeros and the Dini roots: typed wrappers over the kernels."""
