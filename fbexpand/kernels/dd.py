@@ -27,7 +27,6 @@ if JIT_DISABLED:
             return math.copysign(math.inf, exact)
 
 else:
-    from llvmlite import ir
     from numba.core import types
     from numba.extending import intrinsic
 
@@ -36,9 +35,7 @@ else:
         """Return a * b + c with one rounding."""
 
         def codegen(context: Any, builder: Any, signature: Any, args: Any) -> Any:
-            double = ir.DoubleType()
-            function = builder.module.declare_intrinsic("llvm.fma", [double])
-            return builder.call(function, args)
+            return builder.fma(*args)
 
         return types.float64(types.float64, types.float64, types.float64), codegen
 
