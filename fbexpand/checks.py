@@ -7,6 +7,7 @@ from __future__ import annotations
 
 import math
 import operator
+import os
 from typing import Any
 
 import numpy as np
@@ -132,3 +133,14 @@ def all_finite(name: str, array: Numeric) -> Numeric:
         place = f" at index {where[0] if len(where) == 1 else where}" if where else ""
         raise ArgumentValueError(f"{name!r} must be finite (got {array[where]}{place})", name, array)
     return array
+
+
+def storable(name: str, value: Any, size: int) -> None:
+    """Raise the ValueError about argument `name` if it asks for more bytes than the machine's memory."""
+    try:
+        limit = os.sysconf("SC_PHYS_PAGES") * os.sysconf("SC_PAGE_SIZE")
+    except (AttributeError, ValueError, OSError):  # no such question on this platform
+        limit = 1 << 40
+    if size > limit:
+        what = f"small enough for the machine's memory, {size / 1e9:.3g} GB would be needed"
+        raise value_error(name, what, value)

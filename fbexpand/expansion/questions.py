@@ -1,0 +1,77 @@
+"""Questions about the error of a series: the checks of their arguments, and the answers kept."""
+
+from __future__ import annotations
+
+from collections.abc import Sequence
+from typing import TYPE_CHECKING, Any
+
+import numpy as np
+
+from fbexpand import checks
+from fbexpand.estimates.estimate import estimate, source_of
+from fbexpand.estimates.pointwise import envelope
+from fbexpand.estimates.records import ErrorEstimate, PartialSum
+from fbexpand.estimates.requirement import required_terms
+from fbexpand.expansion.arguments import as_radii
+from fbexpand.transform.direct import series_at
+from fbexpand.types import FloatArray
+
+if TYPE_CHECKING:
+    from fbexpand.expansion.record import Expansion
+
+NORMS = ("l2", "sup", "at")
+
+
+def partial_sum(series: Expansion, r: FloatArray, terms: int) -> PartialSum:
+    """Return the partial sum at r with the envelope of its error."""
+    flat = r.ravel()
+    values = series_at(series.basis, series.coefficients[..., :terms], flat)
+    error = np.zeros((int(np.prod(series.batch_shape)), flat.size))
+    if flat.size:
+        for origin in series._origins:
+            error += envelope(series.basis, origin, terms, flat)
+    shape = (*series.batch_shape, *r.shape)
+    return PartialSum(values.reshape(shape)[()], error.reshape(shape)[()], source_of(series._origins))
+
+
+def error_estimate(series: Expansion, terms: Any) -> ErrorEstimate:
+    """Return the estimate for one number of terms or for several."""
+    if terms is None:
+        known: ErrorEstimate | None = series._known.get("estimate")
+        if known is None:
+            known = series._known["estimate"] = _first(
+                estimate(series.basis, series._origins, [series.terms])
+            )
+        return known
+    listed = isinstance(terms, Sequence) and not isinstance(terms, (str, bytes))
+    if listed or (isinstance(terms, np.ndarray) and terms.ndim > 0):
+        cuts = [checks.integer("terms", cut, 1, series.terms) for cut in terms]
+        if not cuts:
+            raise checks.value_error("terms", "non-empty", terms)
+        return estimate(series.basis, series._origins, cuts)
+    return _first(estimate(series.basis, series._origins, [checks.integer("terms", terms, 1, series.terms)]))
+
+
+def _first(many: ErrorEstimate) -> ErrorEstimate:
+    names = ("l2", "sup", "truncation", "quadrature", "table", "rounding")
+    return ErrorEstimate(**{name: getattr(many, name)[0] for name in names}, source=many.source)
+
+
+def terms_for(series: Expansion, tol: Any, norm: Any, at: Any, relative: Any) -> Any:
+    """Return the least number of terms that stays below `tol`."""
+    limit = checks.positive("tol", tol)
+    kind = checks.choice("norm", norm, NORMS)
+    if not isinstance(relative, (bool, np.bool_)):
+        raise checks.type_error("relative", "True or False", relative)
+    place = None
+    if kind == "at":
+        if at is None:
+            raise checks.type_error("at", "a radius where norm is 'at'", at)
+        place = min(
+            float(as_radii("at", checks.finite("at", at), float(series.basis.radius))),
+            float(series.basis.radius),
+        )
+    elif at is not None:
+        raise checks.value_error("at", f"left out where norm is {kind!r}", at)
+    answer = required_terms(series.basis, series._origins, limit, kind, place, bool(relative))
+    return answer.reshape(series.batch_shape)[()]

@@ -1,0 +1,46 @@
+"""Reading a table through its address, so that a scalar function called in a loop counts no references.
+
+An array passed to a compiled function that branches costs two atomic updates of its reference count a call, six times
+the arithmetic of a panel. The caller holds the array; only `load` at indices the table's own header names is used.
+"""
+
+from __future__ import annotations
+
+from typing import Any
+
+from fbexpand.kernels.jit import JIT_DISABLED
+
+if JIT_DISABLED:
+
+    def address(array: Any) -> Any:
+        """Return what `load` reads from: the array itself where nothing is compiled."""
+        return array
+
+    def load(where: Any, index: int) -> float:
+        """Return element `index`."""
+        return float(where[index])
+
+else:
+    from llvmlite import ir
+    from numba.core import cgutils, types
+    from numba.extending import intrinsic
+
+    @intrinsic
+    def address(typingctx: Any, array: Any) -> Any:
+        """Return the address of a C-contiguous float64 array's first element."""
+
+        def codegen(context: Any, builder: Any, signature: Any, args: Any) -> Any:
+            value = context.make_array(signature.args[0])(context, builder, args[0])
+            return builder.ptrtoint(value.data, cgutils.intp_t)
+
+        return types.intp(array), codegen
+
+    @intrinsic
+    def load(typingctx: Any, where: Any, index: Any) -> Any:
+        """Return the double at `where` + 8 * `index`."""
+
+        def codegen(context: Any, builder: Any, signature: Any, args: Any) -> Any:
+            pointer = builder.inttoptr(args[0], ir.DoubleType().as_pointer())
+            return builder.load(builder.gep(pointer, [args[1]]))
+
+        return types.float64(types.intp, types.intp), codegen

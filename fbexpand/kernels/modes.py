@@ -1,0 +1,211 @@
+"""The matrix of modes J_nu(lambda_k x) and their derivatives: arguments in two parts, zeros at the rim kept.
+
+Where the rim condition makes all modes (or their slopes) small near x = 1, an error of an eps of the modulus
+of J_nu is a large part of them. There J_nu(lambda (1 - d)) is summed as a Taylor series about lambda, whose
+first two coefficients the condition fixes to a few eps of themselves; the others follow from Bessel's
+equation.
+"""
+
+from __future__ import annotations
+
+import math
+
+import numpy as np
+
+from fbexpand.kernels.bessel_eval import j_pairs, j_values
+from fbexpand.kernels.bessel_table import LOG_C, LOG_C_LOW
+from fbexpand.kernels.dd import fma, two_sum
+from fbexpand.kernels.first_mode import (
+    SERIES_TERMS,
+    compensated_sum,
+    power_series,
+    quarter_square,
+    series_terms,
+)
+from fbexpand.kernels.jit import inline_kernel, kernel
+from fbexpand.kernels.memory import address, load
+from fbexpand.kernels.power import power_factor
+from fbexpand.types import FloatArray
+
+TAYLOR_TERMS = 26
+MAX_DERIVATIVE = 12
+_DEEPEST = 0.2  # of the radius: the Taylor series about lambda converges for d < 1
+
+
+@inline_kernel
+def wave_number(nu: float, x: float) -> float:
+    """Return about M'/M, how fast J_nu turns at x >= nu: 1 far out, nu^(-1/3) at the turning point."""
+    return math.sqrt(abs((x - nu) * (x + nu)) / (x * x) + 1.5 * (1.0 + nu) ** (-2.0 / 3.0))
+
+
+@kernel
+def rim_series(
+    nu: float, robin: float, c: float, h: float, value: float, slope: float, t: FloatArray
+) -> None:
+    """Fill `t` with t_j h^j, J_nu(c + z) = sum t_j z^j; value and slope are t_0 and t_1.
+
+    c^2 (j+2)(j+1) t_{j+2} + c (j+1)(2j+1) t_{j+1} + (j^2 + c^2 - nu^2) t_j + 2 c t_{j-1} + t_{j-2} = 0.
+    """
+    b = h / c
+    b2 = b * b
+    q = (c - nu) * (c + nu)
+    h2 = h * h
+    t[0] = value
+    t[1] = slope * h
+    older, old = 0.0, 0.0
+    for j in range(t.size - 2):
+        s = (
+            (j + 1.0) * (2.0 * j + 1.0) * b * t[j + 1]
+            + (j * j + q) * b2 * t[j]
+            + h2 * b * (2.0 * old + b * older)
+        )
+        older, old = old, t[j]
+        t[j + 2] = -s / ((j + 1.0) * (j + 2.0))
+        if (
+            j == 1 and abs(robin) < c
+        ):  # the same from c J' + robin J = 0, free of cancellation near robin = -1
+            s = (1.0 + robin) * h2 - (robin * (2.0 + nu * nu) + 3.0 * nu * nu) * b2
+            t[3] = value * b * s / 6.0
+
+
+@kernel
+def near_axis(where: int, nu: float, n: int, z: float, zl: float, a: FloatArray, first: int) -> float:
+    """Return the n-th derivative of J_nu at z + zl < sqrt(2 nu + 2); `a`, `first` as in `power_series`."""
+    ph, pl = two_sum(nu, 2.0 * first - n)
+    yh, yl = quarter_square(z, zl, -1.0)
+    s = compensated_sum(a, first, max(series_terms(z), first + 2), yh, yl)
+    for _ in range(first):
+        s *= -0.25
+    if z > 0.0:
+        return s * power_factor(ph, pl, z, zl / z, load(where, LOG_C), load(where, LOG_C_LOW))
+    if ph == 0.0:
+        for _ in range(n - 2 * first):  # 2^-nu / Gamma(nu + 1), nu = n - 2 first a whole number
+            s *= 0.5
+        for j in range(2, n - 2 * first + 1):
+            s /= j
+        return s
+    return 0.0 if ph > 0.0 else math.copysign(math.inf, s)
+
+
+@inline_kernel
+def by_recurrence(nu: float, n: int, z: float, value: float, slope: float) -> float:
+    """Return the n-th derivative, n >= 2, of J_nu at z from the value and the first, by Bessel's equation."""
+    i = 1.0 / z
+    square = (nu - z) * (nu + z)
+    older, old = 0.0, 0.0
+    for k in range(n - 1):
+        new = (square - k * k) * i * i * value - (2.0 * k + 1.0) * i * slope
+        new -= k * i * (2.0 * old + (k - 1.0) * i * older)
+        older, old, value, slope = old, value, slope, new
+    return slope
+
+
+@kernel
+def plain_modes(
+    data: FloatArray,
+    nu: float,
+    n: int,
+    hi: FloatArray,
+    lo: FloatArray,
+    scale: FloatArray,
+    x: FloatArray,
+    xl: FloatArray,
+    out: FloatArray,
+) -> None:
+    """out[i count + k] = scale[k] J_nu^(n)(lambda_k x_i), in blocks of rows that make long vectors."""
+    count = hi.size
+    rows = max(1, min(2048 // count, x.size))
+    z = np.empty(rows * count)
+    zl = np.empty(rows * count)
+    value = np.empty(rows * count if n > 0 else 0)
+    a = np.zeros(SERIES_TERMS)
+    first = power_series(nu, n, a) if n > 1 else 0
+    where = address(data)
+    for low in range(0, x.size, rows):
+        here = min(rows, x.size - low)
+        size = here * count
+        for i in range(here):
+            for k in range(count):
+                p = hi[k] * x[low + i]
+                z[i * count + k] = p
+                zl[i * count + k] = fma(hi[k], x[low + i], -p) + fma(hi[k], xl[low + i], lo[k] * x[low + i])
+        target = out[low * count : low * count + size]
+        if n == 0:
+            j_values(data, z[:size], zl[:size], target)
+        else:
+            j_pairs(data, z[:size], zl[:size], value[:size], target)
+        if n > 1:
+            for j in range(size):
+                if z[j] < 1.5 or (z[j] < 25.0 and z[j] * z[j] < 2.0 * (nu + 1.0)):
+                    target[j] = near_axis(where, nu, n, z[j], zl[j], a, first)
+                else:
+                    target[j] = by_recurrence(nu, n, z[j], value[j], target[j])
+        for i in range(here):
+            for k in range(count):
+                target[i * count + k] *= scale[k]
+
+
+@kernel
+def rim_modes(
+    nu: float,
+    robin: float,
+    n: int,
+    skip: int,
+    hi: FloatArray,
+    value: FloatArray,
+    slope: FloatArray,
+    scale: FloatArray,
+    d: FloatArray,
+    dl: FloatArray,
+    out: FloatArray,
+) -> None:
+    """Write what is better summed about lambda into the columns k >= skip of `out`; x = 1 - (d + dl).
+
+    `value` and `slope` are J_nu and J_nu' at lambda_k.
+    """
+    count = hi.size
+    near = np.empty(d.size, np.int64)
+    nears = 0
+    for i in range(d.size):
+        if d[i] <= _DEEPEST:
+            near[nears] = i
+            nears += 1
+    t = np.empty(TAYLOR_TERMS + MAX_DERIVATIVE)
+    for k in range(skip, count if nears > 0 else 0):
+        c = hi[k]
+        turn = wave_number(nu, c)
+        if n == 0:
+            wanted = abs(value[k]) * turn < 0.5 * abs(slope[k])
+        else:
+            wanted = n > 1 or abs(slope[k]) < 0.5 * abs(value[k]) * turn
+        if wanted:
+            reach = min(1.0 / (turn * c), _DEEPEST)  # the d below which the series serves
+            h = reach * c
+            rim_series(nu, robin, c, h, value[k], slope[k], t[: TAYLOR_TERMS + n])
+            for j in range(TAYLOR_TERMS):
+                f = t[j + n]
+                for m in range(n):
+                    f *= (j + n - m) / h
+                t[j] = f * scale[k]
+            for i in near[:nears]:
+                if d[i] <= reach:
+                    v = -(d[i] + dl[i]) / reach
+                    s = t[TAYLOR_TERMS - 1]
+                    for j in range(TAYLOR_TERMS - 2, -1, -1):
+                        s = fma(s, v, t[j])
+                    out[i * count + k] = s
+
+
+@kernel
+def radii_two_part(
+    r: FloatArray, radius: float, x: FloatArray, xl: FloatArray, d: FloatArray, dl: FloatArray
+) -> None:
+    """Fill x + xl = r / radius and d + dl = 1 - r / radius, with all its digits where r > radius / 2."""
+    for i in range(r.size):
+        q = r[i] / radius
+        x[i] = q
+        xl[i] = fma(-q, radius, r[i]) / radius
+        p = radius - r[i]
+        q = p / radius
+        d[i] = q
+        dl[i] = fma(-q, radius, p) / radius

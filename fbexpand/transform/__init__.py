@@ -1,0 +1,1 @@
+"""Sums of modes at many radii."""
