@@ -46,7 +46,7 @@ def extra_orders(top: float, x: float) -> float:
     slope = math.acosh(top / x)
     if slope * turning > 21.0:
         turning = 21.0 / slope
-    return math.ceil(min(turning, 1e6)) + 2.0  # the cap is reached at an order of 2e15 only
+    return float(math.ceil(min(turning, 1e6))) + 2.0  # the cap is reached at an order of 2e15 only
 
 
 @inline_kernel

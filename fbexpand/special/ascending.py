@@ -73,7 +73,6 @@ def ascending_series(order: float, x: Any, terms: int) -> PartialSum:
     errors = np.empty_like(flat)
     with np.errstate(over="ignore"):  # where nothing is compiled NumPy would warn
         ascending(order, flat, min(terms, 1 << 62), values, errors)
-    values = values.reshape(array.shape)
     if order % 2.0 == 1.0:
-        values[negative] *= -1.0
-    return PartialSum(values[()], errors.reshape(array.shape)[()], "bound")
+        values[negative.ravel()] *= -1.0
+    return PartialSum(values.reshape(array.shape)[()], errors.reshape(array.shape)[()], "bound")

@@ -8,7 +8,7 @@ import numpy as np
 
 from fbexpand.kernels.debye import DEBYE_FROM, debye_root
 from fbexpand.kernels.first_mode import first_norm
-from fbexpand.special.tables_bridge import bessel_pair_at
+from fbexpand.special.bessel import bessel_pair_at
 from fbexpand.types import FloatArray
 
 PLAIN, RATIO, SCALED_J = "plain", "ratio", "scaled J"

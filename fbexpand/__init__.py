@@ -1,0 +1,16 @@
+"""Fourier-Bessel and Dini series of radial profiles: the public names."""
+
+from fbexpand._version import __version__ as __version__
+from fbexpand.bases import Basis as Basis
+from fbexpand.bases import Dini as Dini
+from fbexpand.bases import FourierBessel as FourierBessel
+from fbexpand.exceptions import TruncationWarning as TruncationWarning
+from fbexpand.exceptions import UnreachableError as UnreachableError
+from fbexpand.expansion import Expansion as Expansion
+from fbexpand.expansion import stack as stack
+from fbexpand.records import PartialSum as PartialSum
+from fbexpand.special.ascending import ascending_series as ascending_series
+from fbexpand.special.bessel import bessel_j as bessel_j
+from fbexpand.special.roots import bessel_zeros as bessel_zeros
+from fbexpand.special.roots import dini_roots as dini_roots
+from fbexpand.special.sequence import bessel_j_sequence as bessel_j_sequence
