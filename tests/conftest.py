@@ -1,4 +1,4 @@
-"""Puts this folder on the path, for the helpers beside the tests, and leaves deep sweeps to `-m deep`."""
+"""Puts this folder on the path, for the modules that tests share, and leaves deep sweeps to `-m deep`."""
 
 from __future__ import annotations
 

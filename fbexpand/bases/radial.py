@@ -10,10 +10,10 @@ from fbexpand import checks
 from fbexpand.bases.spectrum import Spectrum, spectrum_of
 from fbexpand.exceptions import ArgumentValueError
 from fbexpand.kernels.modes import MAX_DERIVATIVE, plain_modes, radii_two_part, rim_modes
+from fbexpand.special.bessel import table_of
 from fbexpand.special.modified import rim_scaled
 from fbexpand.special.norms import RATIO, SCALED_J
 from fbexpand.special.roots import MAX_INDEX, MAX_ORDER
-from fbexpand.special.bessel import table_of
 from fbexpand.types import ArrayLike, FloatArray
 
 EDGE = 1.0 + 4.0 * float(np.finfo(np.float64).eps)  # radii up to this times the radius are inside

@@ -57,8 +57,8 @@ def reduce_large(x: float) -> tuple[int, float, float]:
         for part in range(2):
             term = (m2 if part == 0 else m1) * TWO_OVER_PI[i]  # exact: 27 + 24 bits
             term = math.ldexp(term, exponent + (27 if part == 0 else 0))
-            k = math.floor(term)
-            whole += int(k - 4.0 * math.floor(0.25 * k))
+            k = np.floor(term)  # math.floor would give an int64: a term may be 2^80
+            whole += int(k - 4.0 * np.floor(0.25 * k))
             h, t = two_sum(h, term - k)
             h, l = quick_two_sum(h, l + t)
     k = math.floor(h + 0.5)

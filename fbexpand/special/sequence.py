@@ -8,7 +8,7 @@ import numpy as np
 
 from fbexpand import checks
 from fbexpand.kernels.sequence import TINY, sequence
-from fbexpand.special.bessel import bessel_at, bessel_pair_at
+from fbexpand.special.bessel import MAX_ORDER, bessel_at, bessel_pair_at
 from fbexpand.types import FloatArray
 
 
@@ -24,7 +24,7 @@ def bessel_j_sequence(order: float, count: int, x: Any) -> FloatArray:
     Parameters
     ----------
     order
-        Real number, at least 0.
+        Real number from 0 to 10^6, as for `bessel_j`.
     count
         How many orders, at least 1.
     x
@@ -40,8 +40,8 @@ def bessel_j_sequence(order: float, count: int, x: Any) -> FloatArray:
     TypeError
         If an argument is of the wrong type.
     ValueError
-        If `order` is negative or not finite, `count` is less than 1 or asks for more memory than there is, or
-        `x` is negative at an order that is not an integer.
+        If `order` is negative, not finite or too large, `count` is less than 1 or asks for more memory than
+        there is, or `x` is negative at an order that is not an integer.
 
     References
     ----------
@@ -55,6 +55,8 @@ def bessel_j_sequence(order: float, count: int, x: Any) -> FloatArray:
            [0.7652, 0.4401, 0.1149]])
     """
     order = checks.non_negative("order", order)
+    if order > MAX_ORDER:
+        raise checks.value_error("order", f"within [0, {MAX_ORDER:g}]", order)
     count = checks.integer("count", count, 1)
     array = checks.real_array("x", x)
     checks.storable("count", count, 8 * count * array.size)
@@ -73,7 +75,7 @@ def bessel_j_sequence(order: float, count: int, x: Any) -> FloatArray:
         j[inner], slope[inner] = bessel_pair_at(order, work[inner])
     if not inner.all():
         j[~inner] = bessel_at(order, work[~inner])
-    with np.errstate(over="ignore", invalid="ignore"):  # points past their last order
+    with np.errstate(over="ignore", invalid="ignore", divide="ignore"):  # points past their last order
         sequence(order, work, j, slope, out)
     if not finite.all():
         out[~finite] = np.where(np.isnan(flat[~finite]), np.nan, 0.0)[:, None]
