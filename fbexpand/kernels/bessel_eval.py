@@ -1,11 +1,14 @@
-"""J_nu and J_nu' from the table of an order: one scalar function, looped by the array kernels.
+"""J_nu and J_nu' from the table of an order: points are sorted by region, then each region is one branch-free loop.
 
-The argument may have a low part (x + low, |low| about an ulp of x), so that lambda_k r / R keeps its phase.
+The argument may have a low part (x + low, |low| about an ulp of x), so that lambda_k r / R keeps its phase. Every
+value comes from the same operations on its own point alone, whatever its neighbours.
 """
 
 from __future__ import annotations
 
 import math
+
+import numpy as np
 
 from fbexpand.kernels.bessel_table import (
     INVERSE_WIDTH,
@@ -21,6 +24,7 @@ from fbexpand.kernels.bessel_table import (
     SCALE,
     SCALED,
     SERIES_START,
+    SMOOTH_TERMS,
     WIDTH,
     X0,
     X_PHASE,
@@ -34,173 +38,148 @@ from fbexpand.kernels.power import power_factor
 from fbexpand.kernels.reduction import reduce_large
 from fbexpand.types import FloatArray
 
-_TWO_OVER_PI = 0.6366197723675814
+TWO_OVER_PI = 0.6366197723675814
 _UNSCALE = 1.0 / SCALE
-_LARGE = 2.0**50  # beyond this the two-constant reduction loses digits
+LARGE = 2.0**50  # beyond this the reduction with three constants loses digits
+BLOCK = 256
+ROWS = 12
 
 
 @inline_kernel
-def sine_cosine(quadrant: int, a: float, b: float) -> tuple[float, float]:
-    """Return sin and cos of quadrant pi/2 + a + b, |a| <= pi/4 + tiny, b of the order of eps."""
+def panel_value(where: int, x: float, low: float, x0: float, inverse: float, width: float) -> float:
+    """Return the panel polynomial at x + low."""
+    i = np.int32((x - x0) * inverse)
+    t = (x - (x0 + (float(i) + 0.5) * width)) + low
+    o = np.int64(PANEL_START + i * PANEL_TERMS)
+    s = load(where, o + 15)
+    for k in range(14, -1, -1):
+        s = fma(s, t, load(where, o + k))
+    return s
+
+
+@inline_kernel
+def panel_slope(where: int, x: float, low: float, x0: float, inverse: float, width: float) -> float:
+    """Return the derivative of the panel polynomial at x + low."""
+    i = np.int32((x - x0) * inverse)
+    t = (x - (x0 + (float(i) + 0.5) * width)) + low
+    o = np.int64(PANEL_START + i * PANEL_TERMS)
+    s = 15.0 * load(where, o + 15)
+    for k in range(14, 0, -1):
+        s = fma(s, t, float(k) * load(where, o + k))
+    return s
+
+
+@inline_kernel
+def smooth_parts(where: int, y: float) -> tuple[float, float, float]:
+    """Return delta, g and dg/dy of the one polynomial in y^2; `where` is the address of its coefficients."""
+    z = y * y
+    d = load(where, 1 + SMOOTH_TERMS)
+    for k in range(SMOOTH_TERMS, 1, -1):
+        d = fma(d, z, load(where, k))
+    g = load(where, 1 + 2 * SMOOTH_TERMS)
+    u = 0.0
+    for k in range(2 * SMOOTH_TERMS, 1 + SMOOTH_TERMS, -1):
+        u = fma(u, z, g)
+        g = fma(g, z, load(where, k))
+    return d * y, g, 2.0 * y * u
+
+
+@inline_kernel
+def panel_parts(
+    where: int, y: float, y_low: float, panels: float
+) -> tuple[float, float, float, float, float, float]:
+    """Return the constant of the phase in two parts, delta's linear term, its rest, g and dg/dy."""
+    i = np.int64(min(y * panels, panels - 1.0))
+    t = y - (float(i) + 0.5) / panels
+    tt = t + y_low
+    o = np.int64(i * PHASE_TERMS)
+    g = load(where, o + 19)
+    u = 0.0
+    for k in range(18, 10, -1):
+        u = fma(u, tt, g)
+        g = fma(g, tt, load(where, o + k))
+    d = load(where, o + 10)
+    for k in range(9, 3, -1):
+        d = fma(d, tt, load(where, o + k))
+    slope = load(where, o + 2)
+    p, q = two_prod(slope, t)
+    q += slope * y_low + load(where, o + 3) * t
+    return load(where, o), load(where, o + 1) + q, p, d * tt * tt, g, u
+
+
+@inline_kernel
+def reduced(x: float) -> tuple[float, float, float]:
+    """Return k and x - k pi/2 in two parts, 0 <= x <= 2^50; x - k fl(pi/2) is exact with a fused multiply-add."""
+    k = np.floor(x * TWO_OVER_PI + 0.5)
+    p, q = two_prod(k, HALF_PI2)
+    h, l = two_sum(fma(-k, HALF_PI1, x), -p)
+    return k, h, l - q - k * HALF_PI3
+
+
+@inline_kernel
+def sine_cosine(k: float, s: float, e: float) -> tuple[float, float]:
+    """Return sin and cos of k pi/2 + s + e, |s| up to a few turns, e small; no branches."""
+    turn = np.floor(s * TWO_OVER_PI + 0.5)
+    a, b = quick_two_sum(fma(-turn, HALF_PI1, s), e - turn * HALF_PI2)
+    k += turn
     z = a * a
-    s = z * (-1 / 6.0 + z * (1 / 120.0 + z * (-1 / 5040.0 + z * (1 / 362880.0 + z * (-1 / 39916800.0
-        + z * (1 / 6227020800.0 + z * (-1 / 1307674368000.0 + z * (1 / 355687428096000.0))))))))
-    sine = a + (b + a * s)
+    p = fma(z, 1 / 355687428096000.0, -1 / 1307674368000.0)
+    p = fma(z, p, 1 / 6227020800.0)
+    p = fma(z, p, -1 / 39916800.0)
+    p = fma(z, p, 1 / 362880.0)
+    p = fma(z, p, -1 / 5040.0)
+    p = fma(z, p, 1 / 120.0)
+    p = z * fma(z, p, -1 / 6.0)
+    sine = a + (b + a * p)
     half = 0.5 * z
     w = 1.0 - half
-    c = z * z * (1 / 24.0 + z * (-1 / 720.0 + z * (1 / 40320.0 + z * (-1 / 3628800.0 + z * (1 / 479001600.0
-        + z * (-1 / 87178291200.0 + z * (1 / 20922789888000.0)))))))
-    cosine = w + (((1.0 - w) - half) + (c - a * b))
-    if quadrant & 1:
-        sine, cosine = cosine, -sine
-    if quadrant & 2:
-        sine, cosine = -sine, -cosine
-    return sine, cosine
-
-
-@inline_kernel
-def reduce_angle(x: float) -> tuple[int, float, float]:
-    """Return k mod 4 and x - k pi/2 in two parts, 0 <= x <= 2^50: x - k fl(pi/2) is exact with a fused multiply-add."""
-    k = math.floor(x * _TWO_OVER_PI + 0.5)
-    r = fma(-k, HALF_PI1, x)
-    p, q = two_prod(k, HALF_PI2)
-    h, l = two_sum(r, -p)
-    return int(k) & 3, h, l - q - k * HALF_PI3
+    p = fma(z, 1 / 20922789888000.0, -1 / 87178291200.0)
+    p = fma(z, p, 1 / 479001600.0)
+    p = fma(z, p, -1 / 3628800.0)
+    p = fma(z, p, 1 / 40320.0)
+    p = fma(z, p, -1 / 720.0)
+    p = z * z * fma(z, p, 1 / 24.0)
+    cosine = w + (((1.0 - w) - half) + (p - a * b))
+    quadrant = k - 4.0 * np.floor(0.25 * k)
+    high = np.floor(0.5 * quadrant)  # 0 0 1 1
+    odd = quadrant - 2.0 * high  # 0 1 0 1
+    even = 1.0 - odd
+    sine_out = (odd * cosine + even * sine) * (1.0 - 2.0 * high)
+    mixed = high + odd - 2.0 * high * odd  # 0 1 1 0
+    return sine_out, (odd * sine + even * cosine) * (1.0 - 2.0 * mixed)
 
 
 @kernel
-def j_point(data: int, x: float, low: float) -> float:
-    """Return J_nu(x + low) for x >= 0 (NaN gives NaN); `data` is the address of the table."""
-    value = 0.0
-    if x >= load(data, X0):
-        if x < load(data, X_PHASE):
-            i = int((x - load(data, X0)) * load(data, INVERSE_WIDTH))
-            t = (x - (load(data, X0) + (i + 0.5) * load(data, WIDTH))) + low
-            o = PANEL_START + i * PANEL_TERMS
-            value = load(data, o + 15)
-            for k in range(14, -1, -1):
-                value = fma(value, t, load(data, o + k))
-            if i < load(data, SCALED):
-                value *= _UNSCALE
-        elif x < math.inf:
-            y = load(data, X_PHASE) / x
-            ylow = (fma(-y, x, load(data, X_PHASE)) - y * low) / x
-            panels = load(data, PHASE_PANELS)
-            i = int(min(y * panels, panels - 1.0))
-            t = y - (i + 0.5) / panels
-            tt = t + ylow
-            o = int(load(data, PHASE_START)) + i * PHASE_TERMS
-            g = load(data, o + 19)
-            for k in range(18, 10, -1):
-                g = fma(g, tt, load(data, o + k))
-            d = load(data, o + 10)
-            for k in range(9, 3, -1):
-                d = fma(d, tt, load(data, o + k))
-            p, q = two_prod(load(data, o + 2), t)
-            q += load(data, o + 2) * ylow + load(data, o + 3) * t
-            if x < _LARGE:
-                quadrant, r, e = reduce_angle(x)
-            else:
-                quadrant, r, e = reduce_large(x)
-            s, e1 = two_sum(r, load(data, o))
-            s, e2 = two_sum(s, p)
-            s, e3 = two_sum(s, d * tt * tt)
-            e += e1 + e2 + e3 + (load(data, o + 1) + q + low)
-            turn = math.floor(s * _TWO_OVER_PI + 0.5)
-            s = fma(-turn, HALF_PI1, s)
-            s, e = quick_two_sum(s, e - turn * HALF_PI2)
-            _, cosine = sine_cosine((quadrant + int(turn)) & 3, s, e)
-            value = g * cosine * math.sqrt(_TWO_OVER_PI / x)
-    elif x < load(data, X_SERIES):
-        z = 0.25 * x * x
-        s = 1.0
-        for k in range(13, -1, -1):
-            s = fma(-z * load(data, SERIES_START + k), s, 1.0)
-        if load(data, NU) == 0.0 and load(data, NU_LOW) == 0.0:
-            value = s - 0.5 * x * low
-        elif x > 0.0:
-            value = s * power_factor(load(data, NU), load(data, NU_LOW), x, low / x, load(data, LOG_C), load(data, LOG_C_LOW))
-    elif not x >= 0.0:
-        value = math.nan
-    return value
-
-
-@kernel
-def j_pair(data: int, x: float, low: float) -> tuple[float, float]:
-    """Return J_nu(x + low) and J_nu'(x + low) for x >= 0."""
+def near_pair(where: int, x: float, low: float, want_slope: bool) -> tuple[float, float]:
+    """Return J and J' by the ascending series below the panels; 0 between it and where J underflows."""
+    nu, nu_low = load(where, NU), load(where, NU_LOW)
     value = 0.0
     slope = 0.0
-    if x >= load(data, X0):
-        if x < load(data, X_PHASE):
-            i = int((x - load(data, X0)) * load(data, INVERSE_WIDTH))
-            t = (x - (load(data, X0) + (i + 0.5) * load(data, WIDTH))) + low
-            o = PANEL_START + i * PANEL_TERMS
-            value = load(data, o + 15)
-            for k in range(14, -1, -1):
-                value = fma(value, t, load(data, o + k))
-            slope = 15.0 * load(data, o + 15)
-            for k in range(14, 0, -1):
-                slope = fma(slope, t, k * load(data, o + k))
-            if i < load(data, SCALED):
-                value *= _UNSCALE
-                slope *= _UNSCALE
-        elif x < math.inf:
-            y = load(data, X_PHASE) / x
-            ylow = (fma(-y, x, load(data, X_PHASE)) - y * low) / x
-            panels = load(data, PHASE_PANELS)
-            i = int(min(y * panels, panels - 1.0))
-            t = y - (i + 0.5) / panels
-            tt = t + ylow
-            o = int(load(data, PHASE_START)) + i * PHASE_TERMS
-            g = load(data, o + 19)
-            for k in range(18, 10, -1):
-                g = fma(g, tt, load(data, o + k))
-            gy = 8.0 * load(data, o + 19)
-            for k in range(18, 11, -1):
-                gy = fma(gy, tt, (k - 11.0) * load(data, o + k))
-            d = load(data, o + 10)
-            for k in range(9, 3, -1):
-                d = fma(d, tt, load(data, o + k))
-            p, q = two_prod(load(data, o + 2), t)
-            q += load(data, o + 2) * ylow + load(data, o + 3) * t
-            if x < _LARGE:
-                quadrant, r, e = reduce_angle(x)
-            else:
-                quadrant, r, e = reduce_large(x)
-            s, e1 = two_sum(r, load(data, o))
-            s, e2 = two_sum(s, p)
-            s, e3 = two_sum(s, d * tt * tt)
-            e += e1 + e2 + e3 + (load(data, o + 1) + q + low)
-            turn = math.floor(s * _TWO_OVER_PI + 0.5)
-            s = fma(-turn, HALF_PI1, s)
-            s, e = quick_two_sum(s, e - turn * HALF_PI2)
-            sine, cosine = sine_cosine((quadrant + int(turn)) & 3, s, e)
-            root = math.sqrt(_TWO_OVER_PI / x)
-            value = g * cosine * root
-            slope = -(sine / g) * root - value * ((0.5 + y * gy / g) / x)
-    elif x < load(data, X_SERIES):
+    if x < load(where, X_SERIES):
         z = 0.25 * x * x
         s = 1.0
         u = 0.0  # d s / d z
         for k in range(13, -1, -1):
-            u = -load(data, SERIES_START + k) * fma(z, u, s)
-            s = fma(-z * load(data, SERIES_START + k), s, 1.0)
-        if load(data, NU) == 0.0 and load(data, NU_LOW) == 0.0:
+            c = load(where, SERIES_START + k)
+            u = -c * fma(z, u, s)
+            s = fma(-z * c, s, 1.0)
+        if nu == 0.0 and nu_low == 0.0:
             value = s - 0.5 * x * low
             slope = 0.5 * x * u + 0.5 * low * u
         elif x > 0.0:
-            relative = low / x
-            inner = (load(data, NU) * s + 2.0 * z * u) + load(data, NU_LOW) * s
-            power = power_factor(load(data, NU), load(data, NU_LOW), x, relative, load(data, LOG_C), load(data, LOG_C_LOW))
+            ch, cl = load(where, LOG_C), load(where, LOG_C_LOW)
+            power = power_factor(nu, nu_low, x, low / x, ch, cl)
             value = s * power
-            if x < 1.0:
-                power = power_factor(load(data, NU) - 1.0, load(data, NU_LOW), x, relative, load(data, LOG_C), load(data, LOG_C_LOW))
-                slope = inner * power
-            else:
-                slope = inner * power / x
-        elif load(data, NU) == 1.0 and load(data, NU_LOW) == 0.0:
+            if want_slope:
+                inner = (nu * s + 2.0 * z * u) + nu_low * s
+                if x < 1.0:
+                    h, l = two_sum(nu, -1.0)
+                    slope = inner * power_factor(h, l + nu_low, x, low / x, ch, cl)
+                else:
+                    slope = inner * power / x
+        elif nu == 1.0 and nu_low == 0.0:
             slope = 0.5
-        elif load(data, NU) < 1.0:
+        elif nu < 1.0:
             slope = math.inf
     elif not x >= 0.0:
         value = math.nan
@@ -209,24 +188,168 @@ def j_pair(data: int, x: float, low: float) -> tuple[float, float]:
 
 
 @kernel
+def huge_pair(where: int, x: float, low: float) -> tuple[float, float]:
+    """Return J and J' beyond 2^50, where delta and g - 1 are constants to rounding."""
+    if not x < math.inf:
+        return 0.0, 0.0
+    first = int(load(where, PHASE_START))
+    panels = load(where, PHASE_PANELS)
+    y = load(where, X_PHASE) / x
+    if panels == 0.0:
+        d, g, _ = smooth_parts(where + 8 * first, y)
+        c, c_low, p = load(where, first), load(where, first + 1), 0.0
+    else:
+        c, c_low, p, d, g, _ = panel_parts(where + 8 * first, y, 0.0, panels)
+    k, r, e = reduce_large(x)
+    s, e1 = two_sum(r, c)
+    s, e2 = two_sum(s, p)
+    s, e3 = two_sum(s, d)
+    sine, cosine = sine_cosine(float(k), s, e + e1 + e2 + e3 + (c_low + low))
+    root = math.sqrt(TWO_OVER_PI / x)
+    return g * cosine * root, -(sine / g) * root
+
+
+@kernel
+def phase_block(
+    where: int, size: int, x: FloatArray, low: FloatArray, work: FloatArray, want_slope: bool, out: FloatArray, slope: FloatArray
+) -> None:
+    """Fill out and slope for X <= x < 2^50, size <= BLOCK points."""
+    first = int(load(where, PHASE_START))
+    panels = load(where, PHASE_PANELS)
+    start = load(where, X_PHASE)
+    phases = where + 8 * first
+    y, c, e, p, d = work[0], work[1], work[2], work[3], work[4]
+    g, u, sines = work[5], work[6], work[7]
+    if panels == 0.0:
+        ch, cl = load(phases, 0), load(phases, 1)
+        for n in range(size):
+            y[n] = start / x[n]
+        for n in range(size):
+            d[n], g[n], u[n] = smooth_parts(phases, y[n])
+        for n in range(size):
+            k, h, l = reduced(x[n])
+            s, e1 = two_sum(h, ch)
+            s, e2 = two_sum(s, d[n])
+            sines[n], out[n] = sine_cosine(k, s, l + e1 + e2 + (cl + low[n]))
+    else:
+        for n in range(size):
+            v = start / x[n]
+            y[n] = v
+            e[n] = (fma(-v, x[n], start) - v * low[n]) / x[n]
+        for n in range(size):
+            c[n], e[n], p[n], d[n], g[n], u[n] = panel_parts(phases, y[n], e[n], panels)
+        for n in range(size):
+            k, h, l = reduced(x[n])
+            s, e1 = two_sum(h, c[n])
+            s, e2 = two_sum(s, p[n])
+            s, e3 = two_sum(s, d[n])
+            sines[n], out[n] = sine_cosine(k, s, l + e1 + e2 + e3 + (e[n] + low[n]))
+    if want_slope:
+        for n in range(size):
+            root = math.sqrt(TWO_OVER_PI / x[n])
+            out[n] = g[n] * out[n] * root
+            slope[n] = -(sines[n] / g[n]) * root - out[n] * ((0.5 + y[n] * u[n] / g[n]) / x[n])
+    else:
+        for n in range(size):
+            out[n] = g[n] * out[n] * math.sqrt(TWO_OVER_PI / x[n])
+
+
+@kernel
+def panel_block(
+    where: int, size: int, x: FloatArray, low: FloatArray, want_slope: bool, out: FloatArray, slope: FloatArray
+) -> None:
+    """Fill out and slope for x0 <= x < X."""
+    x0, inverse, width = load(where, X0), load(where, INVERSE_WIDTH), load(where, WIDTH)
+    for n in range(size):
+        out[n] = panel_value(where, x[n], low[n], x0, inverse, width)
+    if want_slope:
+        for n in range(size):
+            slope[n] = panel_slope(where, x[n], low[n], x0, inverse, width)
+    scaled = load(where, SCALED)
+    if scaled > 0.0:
+        end = x0 + scaled * width
+        for n in range(size):
+            if x[n] < end:
+                out[n] *= _UNSCALE
+                if want_slope:
+                    slope[n] *= _UNSCALE
+
+
+@kernel
+def evaluate(
+    data: FloatArray, x: FloatArray, low: FloatArray, want_slope: bool, out: FloatArray, slope: FloatArray
+) -> None:
+    """out[i], slope[i] = J_nu, J_nu' at x[i] + low[i]; an empty `low` stands for zeros, `slope` only if wanted."""
+    where = address(data)
+    x0, start = data[X0], data[X_PHASE]
+    block = min(BLOCK, max(x.size, 1))
+    work = np.empty((ROWS, block))
+    zero = np.zeros(block)
+    inside = np.empty(block, np.int64)
+    beyond = np.empty(block, np.int64)
+    for begin in range(0, x.size, block):
+        size = min(block, x.size - begin)
+        xs = x[begin : begin + size]
+        ls = low[begin : begin + size] if low.size > 0 else zero[:size]
+        here = out[begin : begin + size]
+        there = slope[begin : begin + size] if want_slope else here
+        i = 0
+        b = 0
+        for n in range(size):
+            inside[i] = n
+            beyond[b] = n
+            i_here = (xs[n] >= x0) & (xs[n] < start)
+            b_here = (xs[n] >= start) & (xs[n] < LARGE)
+            i += i_here
+            b += b_here
+            if i == block or b == block:
+                break
+        if i == size:
+            panel_block(where, size, xs, ls, want_slope, here, there)
+            continue
+        if b == size:
+            phase_block(where, size, xs, ls, work, want_slope, here, there)
+            continue
+        px, pl, po, ps = work[8], work[9], work[10], work[11]
+        if i > 0:
+            for j in range(i):
+                px[j] = xs[inside[j]]
+                pl[j] = ls[inside[j]]
+            panel_block(where, i, px, pl, want_slope, po, ps)
+            for j in range(i):
+                here[inside[j]] = po[j]
+            if want_slope:
+                for j in range(i):
+                    there[inside[j]] = ps[j]
+        if b > 0:
+            for j in range(b):
+                px[j] = xs[beyond[j]]
+                pl[j] = ls[beyond[j]]
+            phase_block(where, b, px, pl, work, want_slope, po, ps)
+            for j in range(b):
+                here[beyond[j]] = po[j]
+            if want_slope:
+                for j in range(b):
+                    there[beyond[j]] = ps[j]
+        if i + b < size:
+            for n in range(size):
+                if not (xs[n] >= x0 and xs[n] < LARGE):
+                    if xs[n] >= LARGE:
+                        v, s = huge_pair(where, xs[n], ls[n])
+                    else:
+                        v, s = near_pair(where, xs[n], ls[n], want_slope)
+                    here[n] = v
+                    if want_slope:
+                        there[n] = s
+
+
+@kernel
 def j_values(data: FloatArray, x: FloatArray, low: FloatArray, out: FloatArray) -> None:
     """out[i] = J_nu(x[i] + low[i]); an empty `low` stands for zeros."""
-    where = address(data)
-    if low.size == 0:
-        for i in range(x.size):
-            out[i] = j_point(where, x[i], 0.0)
-    else:
-        for i in range(x.size):
-            out[i] = j_point(where, x[i], low[i])
+    evaluate(data, x, low, False, out, out)
 
 
 @kernel
 def j_pairs(data: FloatArray, x: FloatArray, low: FloatArray, out: FloatArray, slope: FloatArray) -> None:
     """out[i], slope[i] = J_nu, J_nu' at x[i] + low[i]; an empty `low` stands for zeros."""
-    where = address(data)
-    if low.size == 0:
-        for i in range(x.size):
-            out[i], slope[i] = j_pair(where, x[i], 0.0)
-    else:
-        for i in range(x.size):
-            out[i], slope[i] = j_pair(where, x[i], low[i])
+    evaluate(data, x, low, True, out, slope)

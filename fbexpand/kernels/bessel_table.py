@@ -2,7 +2,8 @@
 
 Three regions. x < x0: the ascending series times a power in two parts. x0 <= x < X: panels of uniform width, a
 polynomial of degree 15 about the centre of each. x >= X: modulus and phase, J = sqrt(2/(pi x)) g(y) cos(theta),
-theta = x - c + delta(y), y = X/x, polynomials of degree 8 in panels uniform in y. A solution is marched from x0 to X
+theta = x - c + delta(y), y = X/x: one polynomial in y^2 where X is far beyond the turning point (order < 14),
+else polynomials of degree 8 in panels uniform in y. A solution is marched from x0 to X
 in double-double (upward, where J is the growing or a neutral solution) and normalised at X by the modulus series, or
 at x0 by the ascending series; what the two say is compared.
 """
@@ -18,13 +19,13 @@ from fbexpand.kernels.bessel_direct import (
     ascending_pair,
     log_derivative,
     modulus_series,
-    phase_constant,
     series_pair,
     taylor,
     taylor_step,
 )
-from fbexpand.kernels.dd import dd_add, dd_add_d, dd_div, dd_mul, dd_mul_d, dd_sqrt, two_prod
-from fbexpand.kernels.elementary import LN2_1, LN2_2, PI1, PI2, dd_log_gamma1
+from fbexpand.kernels.bessel_phase import phase_panels, smooth_phase
+from fbexpand.kernels.dd import dd_add, dd_add_d, dd_div, dd_mul, dd_mul_d, two_prod
+from fbexpand.kernels.elementary import LN2_1, LN2_2, dd_log_gamma1
 from fbexpand.kernels.jit import kernel
 from fbexpand.types import FloatArray
 
@@ -33,7 +34,9 @@ NU, NU_LOW, X0, INVERSE_WIDTH, WIDTH, PANELS, SCALED, X_PHASE = 0, 1, 2, 3, 4, 5
 PHASE_PANELS, X_SERIES, LOG_C, LOG_C_LOW, PHASE_START, MISMATCH = 8, 9, 10, 11, 12, 13
 SERIES_START, SERIES_TERMS = 16, 16
 PANEL_START, PANEL_TERMS = 32, 16
-PHASE_TERMS = 20  # constant (2), linear (2), delta_2..8 (7), g_0..8 (9)
+PHASE_TERMS = 20  # a panel: constant (2), linear (2), delta_2..8 (7), g_0..8 (9)
+SMOOTH_TERMS = 9  # no panels: constant (2), delta/y in powers of y^2 (9), g likewise (9)
+SMOOTH_ORDER = 14.0
 SCALE = 2.0**640  # panels where J is near underflow are kept multiplied by this
 
 
@@ -55,15 +58,15 @@ def layout(nh: float, nl: float, head: FloatArray) -> int:
     start = max(series_end, underflow)
     slope = nh / start
     slope = math.sqrt(slope * slope - 1.0) if slope > 1.0 else 0.0
-    width = 1.0 if nh >= 300.0 else 0.5
+    width = 1.0 if nh >= 300.0 else (0.5 if nh >= 2.0 else 0.25)
     while 0.5 * width * slope > 0.66 or 0.5 * width > start / 9.0:
         width *= 0.5
     start = math.ceil(start / width) * width
     if series_end > underflow:
         series_end = start
-    end = 26.0 if nh < 6.0 else 1.25 * nh + 20.0
+    end = max(50.0, 8.5 * nh) if nh < SMOOTH_ORDER else 1.25 * nh + 20.0
     panels = int(math.ceil((end - start) / width))
-    phase_panels = 32 if nh < 6.0 else (256 if nh < 100.0 else 512)
+    phase_panels = 0 if nh < SMOOTH_ORDER else (256 if nh < 100.0 else 512)
     head[:] = 0.0
     head[NU] = nh
     head[NU_LOW] = nl
@@ -75,7 +78,7 @@ def layout(nh: float, nl: float, head: FloatArray) -> int:
     head[PHASE_PANELS] = phase_panels
     head[X_SERIES] = series_end
     head[PHASE_START] = PANEL_START + panels * PANEL_TERMS
-    return PANEL_START + panels * PANEL_TERMS + phase_panels * PHASE_TERMS
+    return PANEL_START + panels * PANEL_TERMS + max(phase_panels, 1) * PHASE_TERMS
 
 
 @kernel
@@ -133,70 +136,6 @@ def _march(data: FloatArray, gh: float, gl: float, at_end: FloatArray) -> None:
 
 
 @kernel
-def _phase_panels(data: FloatArray, a: FloatArray, d: FloatArray, terms: int) -> None:
-    """Fill the panels of delta = sum d_k y^(2k-1) - c and g = sqrt(sum a_k y^2k)."""
-    panels = int(data[PHASE_PANELS])
-    first = int(data[PHASE_START])
-    ch, cl = phase_constant(data[NU], data[NU_LOW])
-    m = np.zeros(9)
-    powers = np.zeros(2 * terms + 1)
-    for i in range(panels):
-        y = (i + 0.5) / panels
-        o = first + i * PHASE_TERMS
-        zh, zl = two_prod(y, y)
-        ah, al = d[terms - 1, 0], d[terms - 1, 1]  # sum d_k z^(k-1)
-        bh, bl = 0.0, 0.0  # its derivative
-        sh, sl = a[terms - 1, 0], a[terms - 1, 1]
-        for k in range(terms - 2, 0, -1):
-            bh, bl = dd_mul(bh, bl, zh, zl)
-            bh, bl = dd_add(bh, bl, ah, al)
-            ah, al = dd_mul(ah, al, zh, zl)
-            ah, al = dd_add(ah, al, d[k, 0], d[k, 1])
-            sh, sl = dd_mul(sh, sl, zh, zl)
-            sh, sl = dd_add(sh, sl, a[k, 0], a[k, 1])
-        sh, sl = dd_mul(sh, sl, zh, zl)
-        sh, sl = dd_add_d(sh, sl, 1.0)
-        vh, vl = dd_mul_d(ah, al, y)
-        wh, wl = dd_mul(bh, bl, zh, zl)
-        wh, wl = dd_add(ah, al, 2.0 * wh, 2.0 * wl)
-        vh, vl = dd_add(vh, vl, -ch, -cl)
-        turns = 2.0 * math.floor(vh / (2.0 * PI1) + 0.5)
-        ph, pl = two_prod(PI1, turns)
-        vh, vl = dd_add(vh, vl, -ph, -pl)
-        ph, pl = two_prod(PI2, turns)
-        vh, vl = dd_add(vh, vl, -ph, -pl)
-        data[o] = vh
-        data[o + 1] = vl
-        data[o + 2] = wh
-        data[o + 3] = wl
-        powers[0] = 1.0
-        for k in range(1, 2 * terms + 1):
-            powers[k] = powers[k - 1] * y
-        for j in range(9):
-            s = 0.0
-            u = 0.0
-            for k in range(terms - 1, 0, -1):
-                if 2 * k < j:
-                    break
-                binomial = 1.0
-                for q in range(j):
-                    binomial *= (2 * k - q) / (q + 1.0)
-                u += a[k, 0] * binomial * powers[2 * k - j]
-                if 2 * k - 1 >= j:
-                    s += d[k, 0] * binomial * (2 * k - j) / (2.0 * k) * powers[2 * k - 1 - j]
-            m[j] = u
-            if j >= 2:
-                data[o + 2 + j] = s
-        gh, _ = dd_sqrt(sh, sl)
-        data[o + 11] = gh
-        for j in range(1, 9):
-            s = m[j]
-            for q in range(1, j):
-                s -= data[o + 11 + q] * data[o + 11 + j - q]
-            data[o + 11 + j] = s / (2.0 * gh)
-
-
-@kernel
 def build(data: FloatArray) -> None:
     """Fill the table whose header `layout` has written."""
     nh, nl, end = data[NU], data[NU_LOW], data[X_PHASE]
@@ -209,7 +148,7 @@ def build(data: FloatArray) -> None:
         dh, dl = dd_div(1.0, 0.0, dh, dl)
         data[SERIES_START + k] = dh
     ratio = max((nh / end) ** 2, 0.3)
-    terms = 40 if nh < 6.0 else int(55.0 / -math.log(ratio)) + 6
+    terms = 24 if nh < SMOOTH_ORDER else int(55.0 / -math.log(ratio)) + 6
     a = np.zeros((terms, 2))
     b = np.zeros((terms, 2))
     terms = modulus_series(nh, nl, end, a, b)
@@ -219,4 +158,9 @@ def build(data: FloatArray) -> None:
     for k in range(1, terms):  # theta' integrated from infinity
         ph, pl = dd_mul_d(b[k, 0], b[k, 1], -end)
         b[k, 0], b[k, 1] = dd_div(ph, pl, 2.0 * k - 1.0, 0.0)
-    _phase_panels(data, a, b, terms)
+    first = int(data[PHASE_START])
+    panels = int(data[PHASE_PANELS])
+    if panels == 0:
+        smooth_phase(nh, nl, a, b, terms, data[first:])
+    else:
+        phase_panels(nh, nl, a, b, terms, panels, data[first:])
