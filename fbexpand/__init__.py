@@ -1,6 +1,7 @@
 """Fourier-Bessel and Dini series of radial profiles: the public names."""
 
 from fbexpand._version import __version__ as __version__
+from fbexpand.analysis import expand as expand
 from fbexpand.bases import Basis as Basis
 from fbexpand.bases import Dini as Dini
 from fbexpand.bases import FourierBessel as FourierBessel
@@ -8,6 +9,7 @@ from fbexpand.exceptions import TruncationWarning as TruncationWarning
 from fbexpand.exceptions import UnreachableError as UnreachableError
 from fbexpand.expansion import Expansion as Expansion
 from fbexpand.expansion import stack as stack
+from fbexpand.profiles.table import RadialTable as RadialTable
 from fbexpand.records import PartialSum as PartialSum
 from fbexpand.special.ascending import ascending_series as ascending_series
 from fbexpand.special.bessel import bessel_j as bessel_j

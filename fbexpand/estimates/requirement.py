@@ -93,6 +93,19 @@ def _predicted(terms: int, error: float, limit: float, power: float, rate: float
     return min(more, terms + drop / rate) if rate > 0.0 else more
 
 
+def predicted_terms(basis: Basis, origin: Origin, row: int, error: float, limit: float) -> float:
+    """Continue one profile's L2 error from the terms at hand down to `limit`; inf where it does not get there."""
+    coefficients = origin.coefficients.reshape(-1, origin.coefficients.shape[-1])
+    terms = coefficients.shape[1]
+    decay = decay_of(basis, coefficients[row : row + 1])
+    power, rate = (0.0, 0.0) if decay.saturated[0] else (float(decay.power[0]) - 0.5, float(decay.rate[0]))
+    predicted = _predicted(terms, error, limit, power, rate)
+    tail = defect_tail(basis, origin.panels, terms)
+    if tail is not None and limit > 0.0:
+        predicted = _with_defects(tail, row, terms, error, limit, predicted)
+    return predicted
+
+
 def _with_defects(
     tail: DefectTail, row: int, terms: int, error: float, limit: float, predicted: float
 ) -> float:

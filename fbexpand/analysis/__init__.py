@@ -1,0 +1,3 @@
+"""From profiles to coefficients."""
+
+from fbexpand.analysis.expand import expand as expand

@@ -1,0 +1,157 @@
+"""A profile in, its series out."""
+
+from __future__ import annotations
+
+from collections.abc import Callable
+from typing import TYPE_CHECKING, Any
+
+import numpy as np
+
+from fbexpand import checks
+from fbexpand.analysis.quadrature import coefficients_of
+from fbexpand.analysis.tolerance import series_to_tolerance
+from fbexpand.exceptions import ArgumentTypeError, ArgumentValueError
+from fbexpand.expansion import Expansion
+from fbexpand.expansion.arguments import as_basis
+from fbexpand.profiles.panels import Panels
+from fbexpand.profiles.resolve import resolve
+from fbexpand.profiles.table import RadialTable, place
+from fbexpand.types import ArrayLike, FloatArray
+
+if TYPE_CHECKING:
+    from fbexpand.bases import Basis
+
+BYTES_PER_COEFFICIENT = 48  # of a profile: the coefficient and what is made of it; roots and norms besides
+
+
+def expand(
+    profile: Callable[[FloatArray], Any] | RadialTable,
+    basis: Basis,
+    *,
+    terms: int | None = None,
+    tol: float | None = None,
+    atol: float = 0.0,
+    breaks: ArrayLike = (),
+    max_terms: int = 10_000,
+) -> Expansion:
+    """Expand a radial profile in a basis: f(r) = sum_k c_k phi_k(r).
+
+    c_k = (1/N_k) integral_0^R f(r) phi_k(r) r dr, N_k = integral_0^R phi_k^2 r dr. The profile is sampled as
+    densely as it needs, whatever the number of terms, and resolved into panels of Chebyshev polynomials;
+    these are integrated against the modes by Gauss rules that are exact to rounding.
+
+    Parameters
+    ----------
+    profile
+        A vectorised function of radii, `(m,)` -> `(*batch, m)`, real or complex, where `(*batch, 1)` or `()`
+        broadcasts; or a `RadialTable`. A function is never called at the axis, the rim or a break.
+    basis
+        A basis, `FourierBessel` or `Dini` or any other that satisfies the `Basis` protocol.
+    terms
+        The number of terms.
+    tol
+        Instead of `terms`: the L2 truncation error, sqrt(integral |f - S|^2 r dr), relative to the norm of f.
+        It is measured on the panels, for every profile of a batch; all get the terms that the worst of them
+        needs. A profile that is 0 takes one term.
+    atol
+        With `tol`: an L2 error, in units of f times length, that will do whatever the norm of f.
+    breaks
+        Radii inside (0, R) at which the profile, or a derivative of it, jumps; one that is smooth in between
+        is resolved to rounding.
+    max_terms
+        With `tol`: the largest number of terms tried.
+
+    Returns
+    -------
+    Expansion with coefficients of shape `(*batch, terms)`; `.evaluations` counts the radii the profile was
+    called for (a table's radii).
+
+    Raises
+    ------
+    TypeError
+        If an argument is of the wrong type, or not exactly one of `terms` and `tol` is given.
+    ValueError
+        If an argument has a wrong value, a table stops short of axis or rim, or the profile returns a wrong
+        shape, numbers that are not finite, or no numbers. What the profile itself raises passes through.
+
+    Warns
+    -----
+    TruncationWarning
+        If `tol` is not reached with `max_terms` terms, or cannot be reached because of rounding. The best
+        series is returned.
+
+    Examples
+    --------
+    >>> import numpy as np
+    >>> from fbexpand import FourierBessel, expand
+    >>> series = expand(lambda r: 1 - r**2, FourierBessel(), terms=3)
+    >>> print(series.coefficients.round(6))
+    [ 1.108022 -0.139778  0.045476]
+    >>> expand(lambda r: np.exp(-9 * r**2), FourierBessel(), tol=1e-3).terms
+    5
+    """
+    as_basis(basis)
+    if (terms is None) == (tol is None):
+        given = "both" if terms is not None else "neither"
+        raise ArgumentTypeError(f"exactly one of 'terms' and 'tol' must be given (got {given})", "terms", terms)
+    if terms is not None:
+        terms = checks.integer("terms", terms, 1)
+        checks.storable("terms", terms, 2 * BYTES_PER_COEFFICIENT * terms)
+    limit = checks.non_negative("atol", atol)
+    share = _tolerance(tol, limit)
+    most = checks.integer("max_terms", max_terms, 1)
+    panels, table = _panels(profile, basis, breaks)
+    size = int(np.prod(panels.batch_shape))
+    if terms is None:
+        return series_to_tolerance(panels, basis, share, limit, most, table)
+    checks.storable("terms", terms, BYTES_PER_COEFFICIENT * terms * (size + 1))
+    coefficients = coefficients_of(panels, basis, terms)
+    return Expansion._make(basis, coefficients, panels=panels, evaluations=panels.evaluations, table=table)
+
+
+def _tolerance(tol: Any, atol: float) -> float:
+    if tol is None:
+        if atol:
+            raise checks.value_error("atol", "left out where 'terms' is given", atol)
+        return 0.0
+    share = checks.non_negative("tol", tol)
+    if share == 0.0 and atol == 0.0:
+        raise checks.value_error("tol", "positive where 'atol' is 0", tol)
+    return share
+
+
+def _panels(profile: Any, basis: Basis, breaks: Any) -> tuple[Panels, FloatArray | None]:
+    """Return the profile resolved on the basis' radius, and the L2 error of a table's resolution."""
+    radius = float(basis.radius)
+    cuts = _as_breaks(breaks, radius)
+    if isinstance(profile, RadialTable):
+        if cuts:
+            raise checks.value_error("breaks", "left out where the profile is a table", breaks)
+        return place(profile, float(basis.order), radius)
+    if not callable(profile):
+        raise checks.type_error("profile", "a function of radii or a RadialTable", profile)
+    return resolve(profile, cuts, radius), None
+
+
+def _as_breaks(breaks: Any, radius: float) -> tuple[float, ...]:
+    """Return the breaks ascending; ValueError unless all are distinct and inside (0, radius)."""
+    if isinstance(breaks, tuple) and not breaks:
+        return ()
+    if breaks is None:
+        raise checks.type_error("breaks", "radii", breaks)
+    array = np.atleast_1d(np.asarray(breaks) if np.size(breaks) else np.zeros(0))
+    array = checks.real_array("breaks", array)
+    if array.ndim != 1:
+        raise checks.value_error("breaks", "one-dimensional", breaks)
+    outside = ~((array > 0.0) & (array < radius))  # NaN is outside
+    if outside.any():
+        bad = float(array[outside][0])
+        raise ArgumentValueError(
+            f"'breaks' must lie inside (0, radius = {radius!r}) (got {bad!r})", "breaks", breaks
+        )
+    array = np.sort(array)
+    again = np.flatnonzero(np.diff(array) == 0.0)
+    if again.size:
+        bad = float(array[again[0]])
+        raise ArgumentValueError(f"'breaks' must be distinct (got {bad!r} twice)", "breaks", breaks)
+    return tuple(array.tolist())

@@ -1,0 +1,135 @@
+"""Coefficients of panels: c_k = (1/N_k) integral f phi_k r dr, the modes' values kept for the next profile."""
+
+from __future__ import annotations
+
+import threading
+from collections import OrderedDict
+from collections.abc import Hashable, Iterator
+from dataclasses import dataclass
+from typing import TYPE_CHECKING, Any
+
+import numpy as np
+
+from fbexpand.analysis.growing import growing_moments
+from fbexpand.analysis.layout import Layout, lay_out
+from fbexpand.profiles.panels import Panels
+from fbexpand.transform.direct import as_rows, from_rows
+from fbexpand.types import FloatArray, Numeric
+
+if TYPE_CHECKING:
+    from fbexpand.bases import Basis
+
+TERMS_AT_ONCE = 256  # at the least; then an octave, up to
+MOST_TERMS_AT_ONCE = 1024  # on the nodes that the last of them takes
+NUMBERS_AT_ONCE = 1 << 21  # modes, or values of the profiles, held at once
+KEPT_BYTES = 64 << 20
+MANY = 2  # profiles per degree of a panel from which it pays to integrate Chebyshev polynomials first
+
+
+@dataclass(frozen=True, eq=False)
+class Weights:
+    """What the coefficients of modes start, ..., start + count - 1 take on given panels.
+
+    `modes` (m, count) are their values at the layout's radii, None where they are too many to keep; `growing`
+    (P, degrees) are the moments of a steep first mode, which has nodes of its own.
+    """
+
+    basis: Basis  # held so that a key made of its identity stays its own
+    layout: Layout
+    norms: FloatArray
+    modes: FloatArray | None
+    growing: FloatArray | None
+
+    @property
+    def nbytes(self) -> int:
+        """Bytes held, about."""
+        return 16 * self.layout.radii.size + 8 * self.norms.size + (0 if self.modes is None else self.modes.nbytes)
+
+
+_kept: OrderedDict[Hashable, Weights] = OrderedDict()
+_lock = threading.Lock()
+
+
+def coefficients_of(panels: Panels, basis: Basis, count: int, start: int = 1) -> Numeric:
+    """Return c_k for k = start, ..., start + count - 1, shape (*batch, count)."""
+    rows = as_rows(panels.coefficients.reshape(*panels.batch_shape, -1)).reshape(
+        -1, panels.edges.size - 1, panels.degrees
+    )
+    out = np.empty((rows.shape[0], count))
+    for first, number in _chunks(start, count):
+        weights = weights_of(basis, panels.edges, panels.degrees, number, first)
+        out[:, first - start : first - start + number] = _integrals(rows, weights, first) / weights.norms
+    return from_rows(out, panels.coefficients[..., 0])
+
+
+def _chunks(start: int, count: int) -> Iterator[tuple[int, int]]:
+    """Cut the terms into octaves, so that low modes are not summed on the nodes of high ones."""
+    stop = start + count
+    while start < stop:
+        number = min(max(TERMS_AT_ONCE, min(start, MOST_TERMS_AT_ONCE)), stop - start)
+        yield start, number
+        start += number
+
+
+def weights_of(basis: Basis, edges: FloatArray, degrees: int, count: int, start: int) -> Weights:
+    """Return the weights, from those kept where they are known; the least recently used go first."""
+    own: Any = getattr(basis, "key", None)
+    key = (id(basis) if own is None else own, edges.tobytes(), degrees, count, start)
+    with _lock:
+        known = _kept.get(key)
+        if known is not None:
+            _kept.move_to_end(key)
+            return known
+    weights = _make(basis, edges, degrees, count, start)
+    with _lock:
+        _kept[key] = weights
+        total = sum(entry.nbytes for entry in _kept.values())
+        while total > KEPT_BYTES and len(_kept) > 1:
+            total -= _kept.popitem(last=False)[1].nbytes
+    return weights
+
+
+def _make(basis: Basis, edges: FloatArray, degrees: int, count: int, start: int) -> Weights:
+    root = float(basis.roots(1, start + count - 1)[0])
+    growing = None
+    if start == 1 and basis.growing:
+        steep = float(basis.roots(1)[0])
+        if count == 1:
+            root = 0.0
+        if steep > max(root, float(basis.order)):
+            growing = growing_moments(basis, edges, degrees)
+        elif count == 1:
+            root = steep
+    layout = lay_out(edges, degrees, float(basis.order), root)
+    modes = None
+    if layout.radii.size * count <= NUMBERS_AT_ONCE:
+        modes = np.ascontiguousarray(basis.modes(layout.radii, count, start))
+    return Weights(basis, layout, basis.norms(count, start), modes, growing)
+
+
+def _integrals(rows: FloatArray, weights: Weights, start: int) -> FloatArray:
+    """Return integral f phi_k r dr, (size, count)."""
+    layout, modes = weights.layout, weights.modes
+    size = rows.shape[0]
+    if modes is not None and size > MANY * layout.degrees:
+        moments = layout.moments(modes)
+        total = rows.reshape(size, -1) @ moments.reshape(-1, moments.shape[2])
+    elif modes is not None and size * layout.radii.size <= NUMBERS_AT_ONCE:
+        total = (layout.values(rows) * layout.weights) @ modes
+    else:
+        total = _in_blocks(rows, weights, start)
+    if weights.growing is not None:
+        total[:, 0] = rows.reshape(size, -1) @ weights.growing.ravel()
+    return total
+
+
+def _in_blocks(rows: FloatArray, weights: Weights, start: int) -> FloatArray:
+    """Sum over blocks of radii, so that neither the modes nor the profiles' values fill the memory."""
+    layout, count = weights.layout, weights.norms.size
+    total = np.zeros((rows.shape[0], count))
+    step = max(1, NUMBERS_AT_ONCE // max(count, rows.shape[0]))
+    for low, values in layout.blocks(rows, step):
+        here = slice(low, low + values.shape[1])
+        modes = weights.basis.modes(layout.radii[here], count, start) if weights.modes is None else weights.modes[here]
+        total += (values * layout.weights[here]) @ modes
+    return total

@@ -1,0 +1,186 @@
+"""Division of the panels on which a profile is not resolved yet."""
+
+from __future__ import annotations
+
+from dataclasses import dataclass
+
+import numpy as np
+
+from fbexpand.profiles import chebyshev
+from fbexpand.profiles.first_look import DEGREES, FirstLook, panel_nodes
+from fbexpand.profiles.judge import BoolArray, Judge, Verdict
+from fbexpand.profiles.sampling import Sampler
+from fbexpand.types import FloatArray, IntArray, Numeric
+
+MOST_EVALUATIONS = 1 << 16  # then what is left unresolved stays so, and the residual says it
+NARROWEST = 8.0  # units in the last place: a panel of this width is not divided
+GRADE = 0.25  # of a panel beside an end where f is not smooth: what is left to divide again
+PERSISTENT = 2  # halvings that a plateau survives in both halves: then it is noise
+UNRESOLVED = float(DEGREES)  # times the last coefficients: the error of a panel given up, a jump's height say
+
+
+@dataclass(eq=False)
+class Piece:
+    """One panel of the batch; arrays are (size,), coefficients (size, DEGREES)."""
+
+    low: float
+    high: float
+    coefficients: Numeric
+    height: FloatArray
+    level: FloatArray
+    residual: FloatArray
+    smooth: BoolArray
+    streak: IntArray
+    at_low: bool  # the panel begins at the axis or a break
+    at_high: bool  # the panel ends at a break or the rim
+    graded: bool = False  # its sibling was smooth: whatever is wrong is at the end that it touches
+    checked: bool = False
+
+    @property
+    def narrow(self) -> bool:
+        """Whether the panel is too narrow to be divided."""
+        return self.high - self.low <= NARROWEST * float(np.spacing(self.high))
+
+    def cut(self) -> float:
+        """Return where to divide."""
+        share = 0.5
+        if self.graded and self.at_low != self.at_high:
+            share = GRADE if self.at_low else 1.0 - GRADE
+        return self.low + share * (self.high - self.low)
+
+
+def divide(
+    sampler: Sampler, judge: Judge, look: FirstLook, verdict: Verdict, coefficients: Numeric, on_scan: Numeric
+) -> list[Piece]:
+    """Return the panels, ascending, that resolve the profile, starting from those of the first look."""
+    edges = look.edges
+    streak = np.zeros(coefficients.shape[0], dtype=np.int64)
+    # half the degrees will do from here on: what a piece has beyond them must be noise
+    beyond = np.abs(coefficients[:, :, DEGREES:]).max(axis=2)
+    verdict = verdict._replace(smooth=verdict.smooth & (beyond <= verdict.residual))
+    coefficients = coefficients[:, :, :DEGREES]
+    pieces = [
+        _piece(float(edges[p]), float(edges[p + 1]), coefficients[:, p], verdict, p, streak, (True, True))
+        for p in range(edges.size - 1)
+    ]
+    done = [piece for piece in pieces if piece.smooth.all()]
+    active = [piece for piece in pieces if not piece.smooth.all()]
+    while True:
+        while active:
+            if sampler.evaluations + 2 * DEGREES * len(active) > MOST_EVALUATIONS:
+                done += [_given_up(piece) for piece in active]
+                active = []
+                break
+            children = _halves(sampler, judge, active)
+            done += [child for child in children if child.smooth.all()]
+            rest = [child for child in children if not child.smooth.all()]
+            done += [_given_up(child) for child in rest if child.narrow]
+            active = [child for child in rest if not child.narrow]
+        active = _missed(judge, look, on_scan, done)
+        if not active:
+            break
+        missed = {id(piece) for piece in active}
+        done = [piece for piece in done if id(piece) not in missed]
+    done.sort(key=lambda piece: piece.low)
+    return done
+
+
+def _piece(
+    low: float,
+    high: float,
+    coefficients: Numeric,
+    verdict: Verdict,
+    p: int,
+    streak: IntArray,
+    ends: tuple[bool, bool],
+) -> Piece:
+    return Piece(
+        low,
+        high,
+        coefficients,
+        verdict.height[:, p],
+        verdict.level[:, p],
+        verdict.residual[:, p],
+        verdict.smooth[:, p],
+        streak,
+        *ends,
+    )
+
+
+def _halves(sampler: Sampler, judge: Judge, active: list[Piece]) -> list[Piece]:
+    """Divide every panel in two, with one call of the profile."""
+    cuts = [piece.cut() for piece in active]
+    low = np.array([end for piece, cut in zip(active, cuts, strict=True) for end in (piece.low, cut)])
+    high = np.array([end for piece, cut in zip(active, cuts, strict=True) for end in (cut, piece.high)])
+    radii = panel_nodes(low, high, DEGREES)
+    nodes = sampler(radii.ravel()).reshape(-1, *radii.shape)
+    coefficients = nodes @ chebyshev.transform(DEGREES)
+    verdict = judge.verdict(low, high, nodes, coefficients)
+    height = np.repeat(np.stack([piece.height for piece in active], axis=1), 2, axis=1)
+    level = np.repeat(np.stack([piece.level for piece in active], axis=1), 2, axis=1)
+    noise = judge.noise(verdict, height, level)
+    children = []
+    for i, piece in enumerate(active):
+        both = noise[:, 2 * i] & noise[:, 2 * i + 1]
+        streak = np.where(both, piece.streak + 1, 0)
+        pair = [
+            _piece(
+                float(low[p]), float(high[p]), coefficients[:, p], verdict, p, streak,
+                (piece.at_low and p == 2 * i, piece.at_high and p == 2 * i + 1),
+            )
+            for p in (2 * i, 2 * i + 1)
+        ]  # fmt: skip
+        for child in pair:
+            child.smooth = child.smooth | (streak >= PERSISTENT)
+        pair[0].graded, pair[1].graded = bool(pair[1].smooth.all()), bool(pair[0].smooth.all())
+        children += pair
+    return children
+
+
+def _given_up(piece: Piece) -> Piece:
+    piece.residual = np.where(piece.smooth, piece.residual, UNRESOLVED * piece.level)
+    piece.checked = True
+    return piece
+
+
+def _missed(judge: Judge, look: FirstLook, on_scan: Numeric, done: list[Piece]) -> list[Piece]:
+    """Return the panels whose polynomials disagree with the scan."""
+    found = []
+    for piece in done:
+        if piece.checked:
+            continue
+        piece.checked = True
+        start, stop = np.searchsorted(look.scan, (piece.low, piece.high))
+        if start == stop:
+            continue
+        t = chebyshev.local(look.scan[start:stop], np.float64(piece.low), np.float64(piece.high))
+        values = piece.coefficients @ chebyshev.evaluation(t, DEGREES)
+        misses = np.abs(values - on_scan[:, start:stop]).max(axis=1)
+        wrong = misses > judge.allowed(piece.height, piece.level)
+        if wrong.any():
+            piece.smooth = piece.smooth & ~wrong
+            piece.streak = np.zeros_like(piece.streak)
+            if piece.narrow:
+                _given_up(piece)
+            else:
+                found.append(piece)
+    return found
+
+
+def level_jumps(pieces: list[Piece]) -> None:
+    """Where a panel of a few units in the last place holds a jump, put the jump on its upper edge.
+
+    Its place is known no better than that, and a polynomial through it would be a ramp with overshoots.
+    """
+    signs = np.where(np.arange(DEGREES) % 2 == 0, 1.0, -1.0)
+    for i in range(1, len(pieces) - 1):
+        piece, before, after = pieces[i], pieces[i - 1], pieces[i + 1]
+        if not piece.narrow or piece.smooth.all():
+            continue
+        left, right = before.coefficients.sum(axis=1), after.coefficients @ signs
+        bounded = piece.height <= np.maximum(np.abs(left), np.abs(right)) * (1.0 + 1e-6)
+        jump = ~piece.smooth & before.smooth & after.smooth & bounded
+        constant = np.zeros_like(piece.coefficients)
+        constant[:, 0] = left
+        piece.coefficients = np.where(jump[:, None], constant, piece.coefficients)
+        piece.residual = np.where(jump, np.maximum(before.residual, after.residual), piece.residual)

@@ -1,0 +1,76 @@
+"""Where a profile is looked at first: one panel between breaks, and a scan that finds narrow features."""
+
+from __future__ import annotations
+
+from dataclasses import dataclass
+from functools import lru_cache
+
+import numpy as np
+
+from fbexpand.profiles import chebyshev
+from fbexpand.records import ReadOnlyArrays
+from fbexpand.types import FloatArray, Numeric
+
+DEGREES = 32  # coefficients on a divided panel: they resolve [h/4, h] beside a singularity at 0 to rounding
+FIRST = 64  # coefficients at the first look: most smooth profiles need no division
+SCAN = 736  # points over the whole radius: no two neighbours further apart than 1.6e-3 R
+FEWEST = 24  # of them between two breaks
+
+
+@dataclass(frozen=True, eq=False)
+class FirstLook(ReadOnlyArrays):
+    """Radii to sample at: Chebyshev points of every panel, then the scan, in ascending order."""
+
+    edges: FloatArray
+    radii: FloatArray
+    scan: FloatArray
+    weights: FloatArray  # integral f r dr is near the sum of weights times f on the scan
+    ends: tuple[int, ...]  # the scan's points of panel p lie in scan[ends[p] : ends[p + 1]]
+    matrices: tuple[FloatArray, ...]  # values on a panel's scan points = coefficients @ matrix
+
+    def on_scan(self, coefficients: Numeric) -> Numeric:
+        """Return the polynomials (size, P, FIRST) at the scan's points, (size, m)."""
+        parts = [coefficients[:, p] @ matrix for p, matrix in enumerate(self.matrices)]
+        return parts[0] if len(parts) == 1 else np.concatenate(parts, axis=1)
+
+
+@lru_cache(maxsize=64)
+def first_look(edges: tuple[float, ...]) -> FirstLook:
+    """Return where to look first between the given edges."""
+    cuts = np.array(edges)
+    lengths = np.diff(cuts)
+    nodes = panel_nodes(cuts[:-1], cuts[1:], FIRST)
+    scans, weights, ends, matrices = [], [], [0], []
+    for low, length in zip(cuts[:-1], lengths, strict=True):
+        count = max(FEWEST, int(np.ceil(SCAN * length / cuts[-1])))
+        share = scan_points(count)
+        r = low + length * share
+        scans.append(r)
+        weights.append(r * (length / count))
+        ends.append(ends[-1] + count)
+        matrices.append(chebyshev.evaluation(2.0 * share - 1.0, FIRST))
+    scan = np.concatenate(scans)
+    return FirstLook(
+        cuts,
+        np.concatenate((nodes.ravel(), scan)),
+        scan,
+        np.concatenate(weights),
+        tuple(ends),
+        tuple(matrices),
+    )
+
+
+def scan_points(count: int) -> FloatArray:
+    """Return ascending points in (0, 1), a jittered grid: nothing periodic agrees with it by chance."""
+    i = np.arange(count)
+    golden = np.modf((i + 1) * 0.6180339887498949)[0]
+    return np.asarray((i + 0.375 + 0.25 * golden) / count)
+
+
+def panel_nodes(low: FloatArray, high: FloatArray, degrees: int) -> FloatArray:
+    """Return the Chebyshev points of panels, (P, degrees), never on an end however narrow the panel is."""
+    x = chebyshev.points(degrees)
+    half = 0.5 * (high - low)[:, None]
+    r = low[:, None] + half * (1.0 + x)
+    below, above = np.nextafter(high, low)[:, None], np.nextafter(low, high)[:, None]
+    return np.clip(r, np.minimum(above, below), np.maximum(above, below))

@@ -1,0 +1,64 @@
+"""A callable profile resolved into panels: divided until Chebyshev coefficients have fallen to rounding.
+
+The panels are those of the whole batch; each profile has its own scale, noise and residual. A scan over the
+whole radius checks the polynomials at points that they were not made from, so that a narrow feature between
+the Chebyshev points is found. Beside an end where f is not smooth panels shrink by a factor of four.
+"""
+
+from __future__ import annotations
+
+from collections.abc import Callable
+from typing import Any
+
+import numpy as np
+
+from fbexpand.profiles import chebyshev
+from fbexpand.profiles.division import divide, level_jumps
+from fbexpand.profiles.first_look import FIRST, first_look
+from fbexpand.profiles.judge import Judge
+from fbexpand.profiles.panels import Panels
+from fbexpand.profiles.sampling import Sampler
+from fbexpand.types import FloatArray, Numeric
+
+
+def resolve(profile: Callable[..., Any], breaks: tuple[float, ...], radius: float) -> Panels:
+    """Return the panels of a profile that may jump at `breaks` (ascending, inside (0, radius))."""
+    sampler = Sampler(profile)
+    look = first_look((0.0, *breaks, radius))
+    values = sampler(look.radii)
+    edges = look.edges
+    split = (edges.size - 1) * FIRST
+    nodes = values[:, :split].reshape(values.shape[0], -1, FIRST)
+    on_scan = values[:, split:]
+    coefficients = nodes @ chebyshev.transform(FIRST)
+    judge = Judge(values, on_scan, look)
+    verdict = judge.verdict(edges[:-1], edges[1:], nodes, coefficients)
+    if verdict.smooth.all():
+        misses = np.maximum.reduceat(np.abs(on_scan - look.on_scan(coefficients)), look.ends[:-1], axis=1)
+        if (misses <= judge.allowed(verdict.height, verdict.level)).all():
+            return _panels(edges, _trimmed(coefficients, verdict.residual), verdict.residual, sampler)
+    pieces = divide(sampler, judge, look, verdict, coefficients, on_scan)
+    level_jumps(pieces)
+    return _panels(
+        np.array([piece.low for piece in pieces] + [radius]),
+        np.stack([piece.coefficients for piece in pieces], axis=1),
+        np.stack([piece.residual for piece in pieces], axis=1),
+        sampler,
+    )
+
+
+def _panels(edges: FloatArray, coefficients: Numeric, residual: FloatArray, sampler: Sampler) -> Panels:
+    shape = sampler.batch_shape
+    return Panels(
+        edges,
+        coefficients.reshape(*shape, *coefficients.shape[1:]),
+        residual.reshape(*shape, residual.shape[1]),
+        sampler.evaluations,
+    )
+
+
+def _trimmed(coefficients: Numeric, residual: FloatArray) -> Numeric:
+    """Leave out degrees, eight at a time, that no profile needs: all below its residual / 16."""
+    needed = (np.abs(coefficients) > (residual / 16.0)[..., None]).any(axis=(0, 1))
+    last = int(np.flatnonzero(needed)[-1]) if needed.any() else 0
+    return np.ascontiguousarray(coefficients[..., : 8 * (last // 8 + 1)])
