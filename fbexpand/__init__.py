@@ -13,6 +13,7 @@ from fbexpand.profiles.table import RadialTable as RadialTable
 from fbexpand.records import PartialSum as PartialSum
 from fbexpand.special.ascending import ascending_series as ascending_series
 from fbexpand.special.bessel import bessel_j as bessel_j
+from fbexpand.special.compiled import compiled_bessel_j as compiled_bessel_j
 from fbexpand.special.roots import bessel_zeros as bessel_zeros
 from fbexpand.special.roots import dini_roots as dini_roots
 from fbexpand.special.sequence import bessel_j_sequence as bessel_j_sequence

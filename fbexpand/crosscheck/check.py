@@ -13,6 +13,7 @@ from fbexpand import checks
 from fbexpand.crosscheck.record import CrossCheck, Seconds
 from fbexpand.exceptions import TruncationWarning
 from fbexpand.expansion import Expansion
+from fbexpand.profiles.table import RadialTable
 from fbexpand.types import FloatArray, IntArray
 
 ALL = 32  # so many terms are all checked unless told which
@@ -112,11 +113,10 @@ def crosscheck(
 
 def _as_function(profile: Any, expansion: Expansion) -> tuple[Callable[[FloatArray], Any], FloatArray, bool]:
     """Return the profile as a function, the radii where it is not smooth, and whether it is a table."""
-    from fbexpand.crosscheck.table import table_function
+    if isinstance(profile, RadialTable):
+        from fbexpand.crosscheck.table import table_function
 
-    found = table_function(profile, expansion)
-    if found is not None:
-        return (*found, True)
+        return (*table_function(profile, expansion.basis), True)
     if not callable(profile):
         raise checks.type_error("profile", "a function of radii or a RadialTable", profile)
     return profile, np.zeros(0), False

@@ -9,14 +9,17 @@ from __future__ import annotations
 import math
 from collections.abc import Callable
 from dataclasses import dataclass
+from fractions import Fraction
 from typing import Any
 
 import numpy as np
 from scipy.special import hyp0f1, ive, jv
 
 from fbexpand.bases import Dini, FourierBessel
-from fbexpand.crosscheck.scipy_roots import EPS, ScipyRoots, jv_error, modulus
+from fbexpand.crosscheck.scipy_roots import EPS, ScipyRoots, jv_error, modulus, small_integer
 from fbexpand.types import FloatArray
+
+SPLIT = 2.0**27 + 1.0
 
 
 @dataclass(frozen=True, eq=False)
@@ -56,18 +59,28 @@ class ScipyModes:
 
     def mode(self, k: int) -> Mode:
         """Return the k-th mode."""
-        root, error = self.roots.root(k)
+        root, rest, error = self.roots.root(k)
         if k == 1 and (self.robin < 0.0 or self.robin == -self.order):
             return self._first(root, error)
-        order, w = self.order, root / self.radius
-        share = 2.0 + error / (EPS * root) if root > 0.0 else 2.0
+        order = self.order
+        w, w_rest = divided(root, rest, self.radius)
+        # beyond `far` jv is better than its rounded argument: the rest of the argument is made up for by J'
+        far = 4.0 if small_integer(order) else max(30.0, 0.5 * order * order)
+
+        def value(r: float) -> float:
+            z = w * r
+            j = jv(order, z)
+            if z <= far:
+                return float(j)
+            slope = order / z * j - jv(order + 1.0, z)
+            return float(j + slope * (product_rest(w, r, z) + w_rest * r))
 
         def spread(r: FloatArray, phi: FloatArray) -> FloatArray:
-            # J's own error, and what rounded arguments and the root's error make of it
             z = w * r
-            return modulus(order, z, phi) * (jv_error(order, z) + share * EPS * np.maximum(z, order))
+            argument = np.where(z > far, 0.0, 2.0 * EPS * np.maximum(z, order)) + (error / root) * z
+            return modulus(order, z, phi) * (jv_error(order, z) + argument)
 
-        return Mode(root, error, lambda r: float(jv(order, w * r)), lambda r: jv(order, w * r), spread, self.cuts(root))
+        return Mode(root, error + abs(rest), value, lambda r: jv(order, w * r), spread, self.cuts(root))
 
     def cuts(self, root: float) -> FloatArray:
         """Return the radii at which a mode of this root changes sign."""
@@ -90,6 +103,24 @@ class ScipyModes:
             lambda r, phi: np.abs(phi) * (share * EPS),
             np.zeros(0),
         )
+
+
+def divided(root: float, rest: float, radius: float) -> tuple[float, float]:
+    """Return (root + rest) / radius in two parts."""
+    exact = (Fraction(root) + Fraction(rest)) / Fraction(radius)
+    high = float(exact)
+    return high, float(exact - Fraction(high))
+
+
+def product_rest(a: float, b: float, product: float) -> float:
+    """Return a b - product, exactly (Dekker)."""
+    t = SPLIT * a
+    ah = t - (t - a)
+    al = a - ah
+    t = SPLIT * b
+    bh = t - (t - b)
+    bl = b - bh
+    return ((ah * bh - product) + ah * bl + al * bh) + al * bl
 
 
 def scaled(order: float, robin: float, root: float) -> Callable[[Any], Any]:

@@ -33,7 +33,7 @@ class MpmathModes:
     def mode(self, k: int) -> Mode:
         """Return the k-th mode."""
         mp, order = self.mp, self.order
-        start, error = self.near.roots.root(k)
+        start, _, error = self.near.roots.root(k)
         first = k == 1 and (self.robin < 0 or self.robin == -order)
         growing = k == 1 and self.robin < -order
         bessel = mp.besseli if growing else mp.besselj
@@ -54,7 +54,7 @@ class MpmathModes:
         return self._made(root, lambda x: bessel(order, root * x) / scale, self.radius**2 * norm / scale**2, cuts)
 
     def _made(self, root: Any, shape: Any, norm: Any, cuts: FloatArray) -> Mode:
-        mp, radius, order = self.mp, self.radius, self.order
+        mp, radius = self.mp, self.radius
 
         def value(r: float) -> float:
             return float(shape(mp.mpf(r) / radius))
@@ -65,7 +65,6 @@ class MpmathModes:
         def spread(r: FloatArray, phi: FloatArray) -> FloatArray:
             return EPS * np.abs(phi)
 
-        del order
         return Mode(float(root), EPS * abs(float(root)), value, values, spread, cuts, float(norm), EPS * float(norm))
 
     def _solve(self, start: float, error: float, growing: bool) -> Any:

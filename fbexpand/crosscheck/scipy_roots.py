@@ -28,8 +28,13 @@ def jv_error(order: float, z: FloatArray) -> FloatArray:
     Measured against ball arithmetic (SciPy 1.17, thousands of points of order below 1000, x below 1e5) and rounded
     up: a few eps where Hankel's expansion serves, 12 for small integer orders, hundreds to millions else.
     """
-    near = 12.0 if order <= 10.0 and order == int(order) else 400.0 + 6.0 * z
+    near = 12.0 if small_integer(order) else 400.0 + 6.0 * z
     return EPS * np.where(z > max(30.0, 0.5 * order * order), 4.0, near)
+
+
+def small_integer(order: float) -> bool:
+    """Whether jv is good to a dozen eps at every argument."""
+    return order <= 10.0 and order == int(order)
 
 
 def modulus(order: float, z: FloatArray, value: FloatArray) -> FloatArray:
@@ -67,17 +72,20 @@ class ScipyRoots:
             )
         return self._zeros
 
-    def root(self, k: int) -> tuple[float, float]:
-        """Return the k-th root (mu of a growing first mode) and what its error may be."""
+    def root(self, k: int) -> tuple[float, float, float]:
+        """Return the k-th root (mu of a growing first mode) in two parts, and what the error of their sum may be."""
         if math.isinf(self.robin):
-            x = self._polished(float(self.zeros(k)[k - 1]))
+            x = float(self.zeros(k)[k - 1])
         elif k == 1:
             return self._first()
         else:
             low, high = (float(z) for z in self.zeros(k)[k - 2 : k])
-            x = self._polished(solve(lambda t: self._residual(t, t in (low, high)), low, high))
+            x = solve(lambda t: self._residual(t, t in (low, high)), low, high)
+        for _ in range(2):  # brentq stops at 4 eps; a step of Newton's method from a double leaves the low part
+            step = self._step(x)
+            x, rest = x + step, step - ((x + step) - x)
         slope = max(1.0 - (self.order / x) ** 2, 1e-3) ** 0.5
-        return x, EPS * x + 2.0 * float(jv_error(self.order, np.array(x))) / slope
+        return x, rest, 2.0 * float(jv_error(self.order, np.array(x))) / slope
 
     def _residual(self, x: float, at_zero: bool) -> float:
         # x J' + robin J, divided by the larger of x and |robin|: no overflow, and the same zeros
@@ -86,28 +94,29 @@ class ScipyRoots:
         value = 0.0 if at_zero else (shift / size) * jv(self.order, x)  # the rounded zero would leave its sign open
         return float(value - (x / size) * jv(self.order + 1.0, x))
 
-    def _polished(self, x: float) -> float:
-        """Return x after a step of Newton's method, where rounding is less than brentq's tolerance."""
+    def _step(self, x: float) -> float:
+        """Return the step of Newton's method from x."""
         f = jv(self.order, x)
         slope = self.order / x * f - jv(self.order + 1.0, x)
         if math.isinf(self.robin):
-            return float(x - f / slope)
-        # d/dx (x J' + robin J) = robin J' - (x - nu^2 / x) J, by Bessel's equation
-        change = self.robin * slope - (x - self.order**2 / x) * f
-        step = (x * slope + self.robin * f) / change if math.isfinite(change) and change != 0.0 else 0.0
-        return float(x - step) if abs(step) < 1e-9 * x else x
+            return float(-f / slope)
+        # d/dx (x J' + robin J) = robin J' - (x - nu^2 / x) J, by Bessel's equation; divided by the larger coefficient
+        size = max(x, abs(self.robin))
+        change = self.robin / size * slope - (x - self.order**2 / x) / size * f
+        step = -(x / size * slope + self.robin / size * f) / change if change != 0.0 else 0.0
+        return float(step) if abs(step) < 1e-9 * x else 0.0
 
-    def _first(self) -> tuple[float, float]:
+    def _first(self) -> tuple[float, float, float]:
         order, shift = self.order, self.robin + self.order
         if self.robin == -order:
-            return 0.0, 0.0
+            return 0.0, 0.0, 0.0
         near = math.sqrt(2.0 * (order + 1.0)) * math.sqrt(abs(shift))
         if self.robin < -order:  # mu I_{nu+1} / I_nu = -shift; the ratio lies between mu / (2 nu + 2) and bounds
             high = math.sqrt(shift * shift + 2.0 * (order + 1.0) * abs(shift))
             x = solve(
                 lambda mu: mu * ratio_i(order, mu) + shift, max(near, -shift) * (1.0 - 1e-12), high * (1.0 + 1e-12)
             )
-            return x, 64.0 * EPS * x
+            return x, 0.0, 64.0 * EPS * x
         j1 = float(self.zeros(1)[0])
 
         def residual(x: float) -> float:
@@ -119,7 +128,7 @@ class ScipyRoots:
         high = min(near, j1)
         x = solve(residual, max(low * (1.0 - 1e-12), TINY), high * (1.0 + 1e-12))
         # conditioning: d ln x / d ln shift is below 1/2, J beside its turning point at large order
-        return x, (64.0 * EPS + float(jv_error(order, np.array(x)))) * x
+        return x, 0.0, (64.0 * EPS + float(jv_error(order, np.array(x)))) * x
 
 
 def ratio_i(order: float, mu: float) -> float:

@@ -46,9 +46,7 @@ def scaled(value: float, exponent: int) -> float:
 
 
 @kernel
-def ascending_point(
-    nu: float, x: float, terms: int, gh: float, gl: float, g_error: float
-) -> tuple[float, float]:
+def ascending_point(nu: float, x: float, terms: int, gh: float, gl: float, g_error: float) -> tuple[float, float]:
     """Return the partial sum at x >= 0 and the bound of |J_nu(x) - sum|."""
     if math.isnan(x):
         return math.nan, math.nan

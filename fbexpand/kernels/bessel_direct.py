@@ -22,9 +22,7 @@ _INVERSE_PRODUCT = np.array([split(Fraction(1, (k + 1) * (k + 2))) for k in rang
 
 
 @kernel
-def ascending_pair(
-    nh: float, nl: float, x: float, gh: float, gl: float
-) -> tuple[float, float, float, float, int]:
+def ascending_pair(nh: float, nl: float, x: float, gh: float, gl: float) -> tuple[float, float, float, float, int]:
     """Return J and J' at x as (jh, jl, dh, dl, e), scaled by 2^-e; g = log Gamma(nu + 1)."""
     zh, zl = two_prod(0.5 * x, 0.5 * x)
     th, tl = 1.0, 0.0
@@ -78,7 +76,7 @@ def modulus_series(nh: float, nl: float, scale: float, a: FloatArray, b: FloatAr
     a_k = a_{k-1} (2k - 1)/(2k) (mu - (2k - 1)^2)/(4 scale^2), mu = 4 nu^2. Where the terms begin to grow (they do
     from k of about x on) the sums are cut.
     """
-    terms = a.shape[0]
+    terms = int(a.shape[0])
     mh, ml = dd_mul(nh, nl, nh, nl)
     ih, il = two_prod(scale, scale)
     ih, il = dd_div(1.0, 0.0, ih, il)
@@ -117,9 +115,12 @@ def phase_constant(nh: float, nl: float) -> tuple[float, float]:
 
 @kernel
 def series_pair(
-    nh: float, nl: float, x: float, a: FloatArray, b: FloatArray, terms: int
+    nh: float, nl: float, x: float, scale: float, a: FloatArray, b: FloatArray, terms: int
 ) -> tuple[float, float, float, float]:
-    """Return J and J' at x = scale of `modulus_series`, from M cos(theta)."""
+    """Return J and J' at x from M cos(theta), the series `a`, `b` of `modulus_series` with that scale."""
+    zh, zl = two_prod(scale, scale)
+    dh, dl = two_prod(x, x)
+    zh, zl = dd_div(zh, zl, dh, dl)
     k = terms - 1
     sh, sl = a[k, 0], a[k, 1]
     th, tl = b[k, 0], b[k, 1]
@@ -127,15 +128,23 @@ def series_pair(
     eh, el = dd_mul_d(th, tl, -x)  # theta - x + c
     eh, el = dd_div(eh, el, 2.0 * k - 1.0, 0.0)
     for i in range(terms - 2, 0, -1):
+        sh, sl = dd_mul(sh, sl, zh, zl)
         sh, sl = dd_add(sh, sl, a[i, 0], a[i, 1])
+        th, tl = dd_mul(th, tl, zh, zl)
         th, tl = dd_add(th, tl, b[i, 0], b[i, 1])
+        gh, gl = dd_mul(gh, gl, zh, zl)
         ph, pl = dd_mul_d(a[i, 0], a[i, 1], -2.0 * i)
         gh, gl = dd_add(gh, gl, ph, pl)
+        eh, el = dd_mul(eh, el, zh, zl)
         ph, pl = dd_mul_d(b[i, 0], b[i, 1], -x)
         ph, pl = dd_div(ph, pl, 2.0 * i - 1.0, 0.0)
         eh, el = dd_add(eh, el, ph, pl)
+    sh, sl = dd_mul(sh, sl, zh, zl)
     sh, sl = dd_add_d(sh, sl, 1.0)
+    th, tl = dd_mul(th, tl, zh, zl)
     th, tl = dd_add_d(th, tl, 1.0)
+    gh, gl = dd_mul(gh, gl, zh, zl)
+    eh, el = dd_mul(eh, el, zh, zl)
     ch, cl = phase_constant(nh, nl)
     eh, el = dd_add(eh, el, -ch, -cl)
     eh, el = dd_add_d(eh, el, x)

@@ -39,7 +39,7 @@ from fbexpand.kernels.reduction import reduce_large
 from fbexpand.types import FloatArray
 
 TWO_OVER_PI = 0.6366197723675814
-_UNSCALE = 1.0 / SCALE
+UNSCALE = 1.0 / SCALE
 LARGE = 2.0**50  # beyond this the reduction with three constants loses digits
 BLOCK = 256
 ROWS = 12
@@ -70,29 +70,29 @@ def panel_slope(where: int, x: float, low: float, x0: float, inverse: float, wid
 
 
 @inline_kernel
-def smooth_parts(where: int, y: float) -> tuple[float, float, float]:
-    """Return delta, g and dg/dy of the one polynomial in y^2; `where` is the address of its coefficients."""
+def smooth_parts(where: int, y: float, first: int) -> tuple[float, float, float]:
+    """Return delta, g and dg/dy of the one polynomial in y^2, whose coefficients begin at `first`."""
     z = y * y
-    d = load(where, 1 + SMOOTH_TERMS)
+    d = load(where, first + 1 + SMOOTH_TERMS)
     for k in range(SMOOTH_TERMS, 1, -1):
-        d = fma(d, z, load(where, k))
-    g = load(where, 1 + 2 * SMOOTH_TERMS)
+        d = fma(d, z, load(where, first + k))
+    g = load(where, first + 1 + 2 * SMOOTH_TERMS)
     u = 0.0
     for k in range(2 * SMOOTH_TERMS, 1 + SMOOTH_TERMS, -1):
         u = fma(u, z, g)
-        g = fma(g, z, load(where, k))
+        g = fma(g, z, load(where, first + k))
     return d * y, g, 2.0 * y * u
 
 
 @inline_kernel
 def panel_parts(
-    where: int, y: float, y_low: float, panels: float
+    where: int, y: float, y_low: float, panels: float, first: int
 ) -> tuple[float, float, float, float, float, float]:
     """Return the constant of the phase in two parts, delta's linear term, its rest, g and dg/dy."""
     i = np.int64(min(y * panels, panels - 1.0))
     t = y - (float(i) + 0.5) / panels
     tt = t + y_low
-    o = np.int64(i * PHASE_TERMS)
+    o = first + i * PHASE_TERMS
     g = load(where, o + 19)
     u = 0.0
     for k in range(18, 10, -1):
@@ -196,10 +196,10 @@ def huge_pair(where: int, x: float, low: float) -> tuple[float, float]:
     panels = load(where, PHASE_PANELS)
     y = load(where, X_PHASE) / x
     if panels == 0.0:
-        d, g, _ = smooth_parts(where + 8 * first, y)
+        d, g, _ = smooth_parts(where, y, first)
         c, c_low, p = load(where, first), load(where, first + 1), 0.0
     else:
-        c, c_low, p, d, g, _ = panel_parts(where + 8 * first, y, 0.0, panels)
+        c, c_low, p, d, g, _ = panel_parts(where, y, 0.0, panels, first)
     k, r, e = reduce_large(x)
     s, e1 = two_sum(r, c)
     s, e2 = two_sum(s, p)
@@ -211,21 +211,27 @@ def huge_pair(where: int, x: float, low: float) -> tuple[float, float]:
 
 @kernel
 def phase_block(
-    where: int, size: int, x: FloatArray, low: FloatArray, work: FloatArray, want_slope: bool, out: FloatArray, slope: FloatArray
+    where: int,
+    size: int,
+    x: FloatArray,
+    low: FloatArray,
+    work: FloatArray,
+    want_slope: bool,
+    out: FloatArray,
+    slope: FloatArray,
 ) -> None:
     """Fill out and slope for X <= x < 2^50, size <= BLOCK points."""
     first = int(load(where, PHASE_START))
     panels = load(where, PHASE_PANELS)
     start = load(where, X_PHASE)
-    phases = where + 8 * first
     y, c, e, p, d = work[0], work[1], work[2], work[3], work[4]
     g, u, sines = work[5], work[6], work[7]
     if panels == 0.0:
-        ch, cl = load(phases, 0), load(phases, 1)
+        ch, cl = load(where, first), load(where, first + 1)
         for n in range(size):
             y[n] = start / x[n]
         for n in range(size):
-            d[n], g[n], u[n] = smooth_parts(phases, y[n])
+            d[n], g[n], u[n] = smooth_parts(where, y[n], first)
         for n in range(size):
             k, h, l = reduced(x[n])
             s, e1 = two_sum(h, ch)
@@ -237,7 +243,7 @@ def phase_block(
             y[n] = v
             e[n] = (fma(-v, x[n], start) - v * low[n]) / x[n]
         for n in range(size):
-            c[n], e[n], p[n], d[n], g[n], u[n] = panel_parts(phases, y[n], e[n], panels)
+            c[n], e[n], p[n], d[n], g[n], u[n] = panel_parts(where, y[n], e[n], panels, first)
         for n in range(size):
             k, h, l = reduced(x[n])
             s, e1 = two_sum(h, c[n])
@@ -256,7 +262,13 @@ def phase_block(
 
 @kernel
 def panel_block(
-    where: int, size: int, x: FloatArray, low: FloatArray, want_slope: bool, out: FloatArray, slope: FloatArray
+    where: int,
+    size: int,
+    x: FloatArray,
+    low: FloatArray,
+    want_slope: bool,
+    out: FloatArray,
+    slope: FloatArray,
 ) -> None:
     """Fill out and slope for x0 <= x < X."""
     x0, inverse, width = load(where, X0), load(where, INVERSE_WIDTH), load(where, WIDTH)
@@ -270,9 +282,9 @@ def panel_block(
         end = x0 + scaled * width
         for n in range(size):
             if x[n] < end:
-                out[n] *= _UNSCALE
+                out[n] *= UNSCALE
                 if want_slope:
-                    slope[n] *= _UNSCALE
+                    slope[n] *= UNSCALE
 
 
 @kernel

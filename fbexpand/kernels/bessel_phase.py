@@ -46,9 +46,7 @@ def smooth_phase(nh: float, nl: float, a: FloatArray, d: FloatArray, terms: int,
 
 
 @kernel
-def phase_panels(
-    nh: float, nl: float, a: FloatArray, d: FloatArray, terms: int, panels: int, out: FloatArray
-) -> None:
+def phase_panels(nh: float, nl: float, a: FloatArray, d: FloatArray, terms: int, panels: int, out: FloatArray) -> None:
     """Fill the panels of delta = sum d_k y^(2k-1) - c and g = sqrt(sum a_k y^2k)."""
     ch, cl = phase_constant(nh, nl)
     m = np.zeros(9)
@@ -103,5 +101,3 @@ def phase_panels(
             for q in range(1, j):
                 s -= out[o + 11 + q] * out[o + 11 + j - q]
             out[o + 11 + j] = s / (2.0 * gh)
-
-

@@ -37,6 +37,7 @@ PANEL_START, PANEL_TERMS = 32, 16
 PHASE_TERMS = 20  # a panel: constant (2), linear (2), delta_2..8 (7), g_0..8 (9)
 SMOOTH_TERMS = 9  # no panels: constant (2), delta/y in powers of y^2 (9), g likewise (9)
 SMOOTH_ORDER = 14.0
+_SMOOTH_SERIES = 26
 SCALE = 2.0**640  # panels where J is near underflow are kept multiplied by this
 
 
@@ -45,7 +46,7 @@ def layout(nh: float, nl: float, head: FloatArray) -> int:
     """Fill the header with the regions of order nu and return the table's size in doubles."""
     series_end = math.sqrt(2.0 * (nh + 1.0)) if nh >= 2.0 else 1.5
     underflow = 0.0  # where log J is about -738, by Debye's leading exponent
-    if nh > 0.0:
+    if nh > 60.0:  # below, the ascending series reaches further down than underflow
         low, high = 0.0, 700.0
         for _ in range(60):
             mid = 0.5 * (low + high)
@@ -65,7 +66,7 @@ def layout(nh: float, nl: float, head: FloatArray) -> int:
     if series_end > underflow:
         series_end = start
     end = max(50.0, 8.5 * nh) if nh < SMOOTH_ORDER else 1.25 * nh + 20.0
-    panels = int(math.ceil((end - start) / width))
+    panels = math.ceil((end - start) / width)
     phase_panels = 0 if nh < SMOOTH_ORDER else (256 if nh < 100.0 else 512)
     head[:] = 0.0
     head[NU] = nh
@@ -136,9 +137,9 @@ def _march(data: FloatArray, gh: float, gl: float, at_end: FloatArray) -> None:
 
 
 @kernel
-def build(data: FloatArray) -> None:
-    """Fill the table whose header `layout` has written."""
-    nh, nl, end = data[NU], data[NU_LOW], data[X_PHASE]
+def _prepare(data: FloatArray) -> tuple[float, float]:
+    """Fill what the ascending series needs; return log Gamma(nu + 1)."""
+    nh, nl = data[NU], data[NU_LOW]
     gh, gl = dd_log_gamma1(nh, nl)
     ph, pl = dd_mul(nh, nl, LN2_1, LN2_2)
     data[LOG_C], data[LOG_C_LOW] = dd_add(ph, pl, gh, gl)  # x^nu / (2^nu Gamma(nu + 1))
@@ -147,20 +148,91 @@ def build(data: FloatArray) -> None:
         dh, dl = dd_mul_d(dh, dl, k + 1.0)
         dh, dl = dd_div(1.0, 0.0, dh, dl)
         data[SERIES_START + k] = dh
+    return gh, gl
+
+
+@kernel
+def _integrate(end: float, terms: int, b: FloatArray) -> None:
+    """Turn theta' into delta: integrate termwise from infinity."""
+    for k in range(1, terms):
+        ph, pl = dd_mul_d(b[k, 0], b[k, 1], -end)
+        b[k, 0], b[k, 1] = dd_div(ph, pl, 2.0 * k - 1.0, 0.0)
+
+
+@kernel
+def _panel_alone(
+    data: FloatArray, i: int, gh: float, gl: float, a: FloatArray, b: FloatArray, terms: int, t: FloatArray
+) -> None:
+    """Fill panel i of an order below SMOOTH_ORDER from one expansion at its centre, not from its neighbours."""
+    nh, nl = data[NU], data[NU_LOW]
+    c = data[X0] + (i + 0.5) * data[WIDTH]
+    if c < _series_from(nh):
+        jh, jl, dh, dl, e = ascending_pair(nh, nl, c, gh, gl)
+        f = math.ldexp(1.0, e)
+        jh, jl, dh, dl = jh * f, jl * f, dh * f, dl * f
+    else:
+        jh, jl, dh, dl = series_pair(nh, nl, c, data[X_PHASE], a, b, terms)
+    taylor(nh, nl, c, jh, jl, dh, dl, t)
+    o = PANEL_START + i * PANEL_TERMS
+    for k in range(PANEL_TERMS):
+        data[o + k] = t[k, 0]
+
+
+@kernel
+def _series_from(nu: float) -> float:
+    """Return where the modulus series takes over: below, it is cut too early; above, the ascending one cancels."""
+    return max(24.0, 1.25 * nu + 20.0)
+
+
+@kernel
+def fill(data: FloatArray, x: FloatArray) -> None:
+    """Fill what the points `x` need of a table below SMOOTH_ORDER; all of it if `x` is empty.
+
+    A panel depends on the order and its place alone, so that it does not matter which are filled first.
+    """
+    nh, nl, start, end = data[NU], data[NU_LOW], data[X0], data[X_PHASE]
+    gh, gl = _prepare(data)
+    panels = int(data[PANELS])
+    everything = x.size == 0
+    terms = 0
+    a = np.zeros((_SMOOTH_SERIES, 2))
+    b = np.zeros((_SMOOTH_SERIES, 2))
+    t = np.zeros((TAYLOR_TERMS, 2))
+    for n in range(panels + 1 if everything else x.size):
+        if everything:
+            i = n
+        elif x[n] >= start:
+            i = int((x[n] - start) * data[INVERSE_WIDTH]) if x[n] < end else panels
+        else:
+            i = -1
+        if i < 0:
+            continue
+        if terms == 0 and start + (i + 0.5) * data[WIDTH] >= _series_from(nh):
+            terms = modulus_series(nh, nl, end, a, b)
+        if i < panels:
+            if math.isnan(data[PANEL_START + i * PANEL_TERMS]):
+                _panel_alone(data, i, gh, gl, a, b, terms, t)
+        else:
+            first = int(data[PHASE_START])
+            if math.isnan(data[first]):
+                d = b.copy()
+                _integrate(end, terms, d)
+                smooth_phase(nh, nl, a, d, terms, data[first:])
+
+
+@kernel
+def build(data: FloatArray) -> None:
+    """Fill the table of an order from SMOOTH_ORDER on, whose header `layout` has written."""
+    nh, nl, end = data[NU], data[NU_LOW], data[X_PHASE]
+    gh, gl = _prepare(data)
     ratio = max((nh / end) ** 2, 0.3)
-    terms = 24 if nh < SMOOTH_ORDER else int(55.0 / -math.log(ratio)) + 6
+    terms = int(55.0 / -math.log(ratio)) + 6
     a = np.zeros((terms, 2))
     b = np.zeros((terms, 2))
     terms = modulus_series(nh, nl, end, a, b)
     at_end = np.zeros(4)
-    at_end[0], at_end[1], at_end[2], at_end[3] = series_pair(nh, nl, end, a, b, terms)
+    at_end[0], at_end[1], at_end[2], at_end[3] = series_pair(nh, nl, end, end, a, b, terms)
     _march(data, gh, gl, at_end)
-    for k in range(1, terms):  # theta' integrated from infinity
-        ph, pl = dd_mul_d(b[k, 0], b[k, 1], -end)
-        b[k, 0], b[k, 1] = dd_div(ph, pl, 2.0 * k - 1.0, 0.0)
+    _integrate(end, terms, b)
     first = int(data[PHASE_START])
-    panels = int(data[PHASE_PANELS])
-    if panels == 0:
-        smooth_phase(nh, nl, a, b, terms, data[first:])
-    else:
-        phase_panels(nh, nl, a, b, terms, panels, data[first:])
+    phase_panels(nh, nl, a, b, terms, int(data[PHASE_PANELS]), data[first:])

@@ -98,9 +98,7 @@ def log_gamma_bounded(nu: float) -> tuple[float, float, float]:
 
 
 @kernel
-def power_bounded(
-    nu: float, x: float, gh: float, gl: float, g_error: float
-) -> tuple[float, float, int, float]:
+def power_bounded(nu: float, x: float, gh: float, gl: float, g_error: float) -> tuple[float, float, int, float]:
     """Return h, low, e, bound of the relative error: (h + low) 2^e = (x/2)^nu / Gamma(nu + 1), 0 < x < inf.
 
     g and its error come from `log_gamma_bounded`.

@@ -79,9 +79,7 @@ def debye_sums(nu: float, w: float) -> tuple[float, float]:
     q = p * p
     inverse = 1.0 / w
     power = inverse
-    u = (
-        _U[1, 1] * q + _U[1, 0]
-    ) * inverse  # what is left of the sums beyond 1 and 1/2: small, so rounding is too
+    u = (_U[1, 1] * q + _U[1, 0]) * inverse  # what is left of the sums beyond 1 and 1/2: small, so rounding is too
     d = 0.0
     for k in range(2, DEBYE_TERMS):
         a = _U[k, k]

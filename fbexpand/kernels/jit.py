@@ -15,7 +15,7 @@ import os
 import re
 import tempfile
 from collections.abc import Callable
-from functools import lru_cache
+from functools import cache, lru_cache
 from pathlib import Path
 from typing import Any, TypeVar
 
@@ -29,12 +29,12 @@ _IMPORT = re.compile(r"^\s*from fbexpand\.kernels\.(\w+) import", re.MULTILINE)
 JIT_DISABLED = bool(numba.config.DISABLE_JIT)
 
 
-@lru_cache(maxsize=None)
+@cache
 def _text(name: str) -> bytes:
     return (_FOLDER / f"{name}.py").read_bytes()
 
 
-@lru_cache(maxsize=None)
+@cache
 def stamp(name: str) -> str:
     """Return a digest over kernel file `name` and every kernel file it imports, directly or not."""
     seen: set[str] = set()

@@ -16,9 +16,9 @@ if JIT_DISABLED:
         """Return what `load` reads from: the array itself where nothing is compiled."""
         return array
 
-    def load(where: Any, index: int) -> float:
+    def load(where: Any, index: Any) -> float:
         """Return element `index`."""
-        return float(where[index])
+        return float(where[int(index)])
 
 else:
     from llvmlite import ir

@@ -39,9 +39,7 @@ def wave_number(nu: float, x: float) -> float:
 
 
 @kernel
-def rim_series(
-    nu: float, robin: float, c: float, h: float, value: float, slope: float, t: FloatArray
-) -> None:
+def rim_series(nu: float, robin: float, c: float, h: float, value: float, slope: float, t: FloatArray) -> None:
     """Fill `t` with t_j h^j, J_nu(c + z) = sum t_j z^j; value and slope are t_0 and t_1.
 
     c^2 (j+2)(j+1) t_{j+2} + c (j+1)(2j+1) t_{j+1} + (j^2 + c^2 - nu^2) t_j + 2 c t_{j-1} + t_{j-2} = 0.
@@ -54,16 +52,10 @@ def rim_series(
     t[1] = slope * h
     older, old = 0.0, 0.0
     for j in range(t.size - 2):
-        s = (
-            (j + 1.0) * (2.0 * j + 1.0) * b * t[j + 1]
-            + (j * j + q) * b2 * t[j]
-            + h2 * b * (2.0 * old + b * older)
-        )
+        s = (j + 1.0) * (2.0 * j + 1.0) * b * t[j + 1] + (j * j + q) * b2 * t[j] + h2 * b * (2.0 * old + b * older)
         older, old = old, t[j]
         t[j + 2] = -s / ((j + 1.0) * (j + 2.0))
-        if (
-            j == 1 and abs(robin) < c
-        ):  # the same from c J' + robin J = 0, free of cancellation near robin = -1
+        if j == 1 and abs(robin) < c:  # the same from c J' + robin J = 0, free of cancellation near robin = -1
             s = (1.0 + robin) * h2 - (robin * (2.0 + nu * nu) + 3.0 * nu * nu) * b2
             t[3] = value * b * s / 6.0
 
@@ -197,9 +189,7 @@ def rim_modes(
 
 
 @kernel
-def radii_two_part(
-    r: FloatArray, radius: float, x: FloatArray, xl: FloatArray, d: FloatArray, dl: FloatArray
-) -> None:
+def radii_two_part(r: FloatArray, radius: float, x: FloatArray, xl: FloatArray, d: FloatArray, dl: FloatArray) -> None:
     """Fill x + xl = r / radius and d + dl = 1 - r / radius, with all its digits where r > radius / 2."""
     for i in range(r.size):
         q = r[i] / radius

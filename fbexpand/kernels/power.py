@@ -61,9 +61,7 @@ def log_two_part(x: float) -> tuple[float, float]:
     p, q = two_prod(m, LOG_TABLE[3 * j])
     r = p - 1.0
     rh, rl = two_prod(r, r)
-    tail = r * rh * (
-        1 / 3.0 + r * (-0.25 + r * (0.2 + r * (-1 / 6.0 + r * (1 / 7.0 + r * (-0.125 + r * (1 / 9.0))))))
-    )
+    tail = r * rh * (1 / 3.0 + r * (-0.25 + r * (0.2 + r * (-1 / 6.0 + r * (1 / 7.0 + r * (-0.125 + r * (1 / 9.0)))))))
     s, t1 = two_sum(e * LN2_HIGH, LOG_TABLE[3 * j + 1])
     s, t2 = two_sum(s, r)
     s, t3 = two_sum(s, -0.5 * rh)
@@ -86,7 +84,7 @@ def exp_two_part(h: float, l: float) -> float:
     e = (n - j) >> 5
     p = r * r * (0.5 + r * (1 / 6.0 + r * (1 / 24.0 + r * (1 / 120.0 + r * (1 / 720.0)))))
     p = r + (p + s)
-    t = EXP_TABLE[2 * j]
+    t = float(EXP_TABLE[2 * j])
     v = t + (EXP_TABLE[2 * j + 1] + t * p)
     half = e >> 1
     return v * math.ldexp(1.0, half) * math.ldexp(1.0, e - half)

@@ -206,9 +206,7 @@ def _row_of(pieces: FloatArray, count: int, t: float) -> int:
 
 
 @kernel
-def far_point(
-    nu: float, scale: float, pieces: FloatArray, count: int, beta: float
-) -> tuple[float, float, float]:
+def far_point(nu: float, scale: float, pieces: FloatArray, count: int, beta: float) -> tuple[float, float, float]:
     """Return G and two derivatives with respect to beta; `count` = 0 means by McMahon's series."""
     if count == 0:
         c1, c3, c5, c7 = mcmahon_coefficients(nu)

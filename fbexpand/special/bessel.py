@@ -10,7 +10,7 @@ import numpy as np
 
 from fbexpand import checks
 from fbexpand.kernels.bessel_eval import j_pairs, j_values
-from fbexpand.kernels.bessel_table import PANEL_START, build, layout
+from fbexpand.kernels.bessel_table import PANEL_START, SMOOTH_ORDER, build, fill, layout
 from fbexpand.types import FloatArray
 
 MAX_ORDER = 1e6
@@ -18,28 +18,62 @@ MAX_DERIVATIVE = 4
 _KEPT_BYTES = 64 * 2**20
 
 _tables: OrderedDict[tuple[float, float], FloatArray] = OrderedDict()
+_begun: OrderedDict[tuple[float, float], FloatArray] = OrderedDict()  # filled in part, for a few points
 _lock = threading.Lock()
+_FEW = 8
+_KEPT_BEGUN = 64
 _NO_LOW = np.zeros(0)
 
 
 def table_of(order: float, order_low: float = 0.0) -> FloatArray:
-    """Return the table of order + order_low; the least recently used go once all take over 64 MB."""
+    """Return the whole table of order + order_low; the least recently used go once all take over 64 MB."""
     key = (order, order_low)
     with _lock:
         data = _tables.get(key)
         if data is not None:
             _tables.move_to_end(key)
             return data
-    head = np.zeros(PANEL_START)
-    data = np.zeros(layout(order, order_low, head))
-    data[:PANEL_START] = head
-    build(data)
+        begun = _begun.get(key)
+    if begun is None:
+        begun = _blank(order, order_low)
+    if order < SMOOTH_ORDER:
+        with _lock:  # a table that was begun for a few points is finished by one thread
+            fill(begun, _NO_LOW)
+    else:
+        build(begun)
     with _lock:
-        data = _tables.setdefault(key, data)
+        data = _tables.setdefault(key, begun)
+        _begun.pop(key, None)
         total = sum(table.nbytes for table in _tables.values())
         while total > _KEPT_BYTES and len(_tables) > 1:
             total -= _tables.popitem(last=False)[1].nbytes
     return data
+
+
+def _blank(order: float, order_low: float) -> FloatArray:
+    head = np.zeros(PANEL_START)
+    size = layout(order, order_low, head)
+    data = np.full(size, np.nan) if order < SMOOTH_ORDER else np.zeros(size)
+    data[:PANEL_START] = head
+    return data
+
+
+def _few(order: float, order_low: float, x: FloatArray, low: FloatArray, out: FloatArray) -> bool:
+    """Evaluate a few points of a low order from only the panels they need; say whether that was done."""
+    if x.size > _FEW or not order < SMOOTH_ORDER:
+        return False
+    key = (order, order_low)
+    with _lock:
+        if key in _tables:
+            return False
+        data = _begun.get(key)
+        if data is None:
+            data = _begun[key] = _blank(order, order_low)
+            if len(_begun) > _KEPT_BEGUN:
+                _begun.popitem(last=False)
+        fill(data, x)
+        j_values(data, x, low, out)
+    return True
 
 
 def _flat(x: FloatArray, x_low: FloatArray | None) -> tuple[FloatArray, FloatArray]:
@@ -71,7 +105,9 @@ def bessel_at(
         return bessel_pair_at(order, x, x_low, order_low=order_low)[1]
     flat, low = _flat(x, x_low)
     out = np.empty_like(flat)
-    if derivative == 0:
+    if derivative == 0 and _few(order, order_low, flat, low, out):
+        pass
+    elif derivative == 0:
         j_values(table_of(order, order_low), flat, low, out)
     else:
         from fbexpand.kernels.modes import plain_modes
@@ -125,10 +161,12 @@ def bessel_j(order: Any, x: Any, *, derivative: int = 0) -> Any:
 
     Examples
     --------
-    >>> from fbexpand.special.bessel import bessel_j
-    >>> bessel_j(0.0, [0.0, 1.0]).round(10)
-    array([1.        , 0.7651976866])
+    >>> from fbexpand import bessel_j
+    >>> bessel_j(0.0, [0.0, 1.0]).round(4)
+    array([1.    , 0.7652])
     """
+    if type(x) is float and type(order) is float and derivative == 0 and 0.0 <= order <= MAX_ORDER and x >= 0.0:
+        return _one_point(order + 0.0, x)
     n = checks.integer("derivative", derivative, 0, MAX_DERIVATIVE)
     points = checks.real_array("x", x)
     orders = checks.real_array("order", order)
@@ -155,6 +193,14 @@ def bessel_j(order: Any, x: Any, *, derivative: int = 0) -> Any:
         out[here] = _one_order(float(value) + 0.0, flat[here], n)
         begin = int(end)
     return out.reshape(points.shape)[()]
+
+
+def _one_point(order: float, x: float) -> Any:
+    """Evaluate one float without the cost of arrays' checks; the same kernel, the same bits."""
+    points, out = np.array((x,)), np.empty(1)
+    if not _few(order, 0.0, points, _NO_LOW, out):
+        j_values(table_of(order), points, _NO_LOW, out)
+    return out[0]
 
 
 def _one_order(order: float, x: FloatArray, n: int) -> FloatArray:
