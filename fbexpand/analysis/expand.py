@@ -146,9 +146,7 @@ def _as_breaks(breaks: Any, radius: float) -> tuple[float, ...]:
     outside = ~((array > 0.0) & (array < radius))  # NaN is outside
     if outside.any():
         bad = float(array[outside][0])
-        raise ArgumentValueError(
-            f"'breaks' must lie inside (0, radius = {radius!r}) (got {bad!r})", "breaks", breaks
-        )
+        raise ArgumentValueError(f"'breaks' must lie inside (0, radius = {radius!r}) (got {bad!r})", "breaks", breaks)
     array = np.sort(array)
     again = np.flatnonzero(np.diff(array) == 0.0)
     if again.size:

@@ -35,8 +35,7 @@ class Layout(ReadOnlyArrays):
         if len(self.groups) == 1 and self.groups[0].panels.size == rows.shape[1]:
             return (rows @ self.groups[0].rule.evaluation(self.degrees)).reshape(size, -1)
         parts = [
-            (rows[:, group.panels] @ group.rule.evaluation(self.degrees)).reshape(size, -1)
-            for group in self.groups
+            (rows[:, group.panels] @ group.rule.evaluation(self.degrees)).reshape(size, -1) for group in self.groups
         ]
         return np.concatenate(parts, axis=1)
 

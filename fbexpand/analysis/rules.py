@@ -11,7 +11,6 @@ from dataclasses import dataclass
 from functools import lru_cache
 
 import numpy as np
-from scipy.linalg import eigvalsh_tridiagonal
 
 from fbexpand.kernels.gauss import refine_rule
 from fbexpand.profiles import chebyshev
@@ -68,8 +67,9 @@ def sizes(waves: FloatArray, degrees: int, ratio: FloatArray, fraction: float) -
 
 
 def _count(waves: FloatArray, degrees: FloatArray | float) -> IntArray:
-    """Return the Gauss points that integrate a polynomial times a wave: cos(w t) is resolved by a degree
-    somewhat beyond w, and exp(w (t - 1)) by less.
+    """Return the Gauss points that integrate a polynomial times a wave.
+
+    cos(w t) is resolved by a degree somewhat beyond w, and exp(w (t - 1)) by less.
     """
     degree = waves + 11.0 * np.cbrt(0.5 * waves) + 6.0
     return np.ceil(0.5 * (degree + degrees + 2.0)).astype(np.int64)
@@ -108,7 +108,8 @@ def jacobi_rule(count: int, power: float) -> tuple[FloatArray, FloatArray]:
     diagonal[1:] = power * power / (m[1:] * (m[1:] + 2.0))
     k, m = k[1:], m[1:]
     beside = 2.0 * k * (k + power) / (m * np.sqrt((m + 1.0) * (m - 1.0)))
-    t = 0.5 * (1.0 + eigvalsh_tridiagonal(diagonal, beside))
+    # the lower triangle of a dense matrix: it is small, and importing a tridiagonal solver takes longer
+    t: FloatArray = 0.5 * (1.0 + np.linalg.eigvalsh(np.diag(diagonal) + np.diag(beside, -1)))
     weights = np.empty(count)
     refine_rule(power, t, weights)
     return t, weights

@@ -24,7 +24,6 @@ from fbexpand.kernels.bessel_table import (
     SCALE,
     SCALED,
     SERIES_START,
-    SMOOTH_TERMS,
     WIDTH,
     X0,
     X_PHASE,
@@ -36,7 +35,7 @@ from fbexpand.kernels.jit import inline_kernel, kernel
 from fbexpand.kernels.memory import address, load
 from fbexpand.kernels.power import power_factor
 from fbexpand.kernels.reduction import reduce_large
-from fbexpand.types import FloatArray
+from fbexpand.types import FloatArray, IntArray
 
 TWO_OVER_PI = 0.6366197723675814
 UNSCALE = 1.0 / SCALE
@@ -51,10 +50,13 @@ def panel_value(where: int, x: float, low: float, x0: float, inverse: float, wid
     i = np.int32((x - x0) * inverse)
     t = (x - (x0 + (float(i) + 0.5) * width)) + low
     o = np.int64(PANEL_START + i * PANEL_TERMS)
-    s = load(where, o + 15)
-    for k in range(14, -1, -1):
-        s = fma(s, t, load(where, o + k))
-    return s
+    t2 = t * t  # odd and even powers apart: half as long a chain of additions to wait for
+    s = load(where, o + 14)
+    u = load(where, o + 15)
+    for k in range(12, -1, -2):
+        s = fma(s, t2, load(where, o + k))
+        u = fma(u, t2, load(where, o + k + 1))
+    return fma(u, t, s)
 
 
 @inline_kernel
@@ -63,25 +65,82 @@ def panel_slope(where: int, x: float, low: float, x0: float, inverse: float, wid
     i = np.int32((x - x0) * inverse)
     t = (x - (x0 + (float(i) + 0.5) * width)) + low
     o = np.int64(PANEL_START + i * PANEL_TERMS)
+    t2 = t * t
     s = 15.0 * load(where, o + 15)
-    for k in range(14, 0, -1):
-        s = fma(s, t, float(k) * load(where, o + k))
-    return s
+    u = 14.0 * load(where, o + 14)
+    for k in range(12, 0, -2):
+        s = fma(s, t2, (k + 1.0) * load(where, o + k + 1))
+        u = fma(u, t2, float(k) * load(where, o + k))
+    return fma(u, t, fma(s, t2, load(where, o + 1)))
 
 
 @inline_kernel
-def smooth_parts(where: int, y: float, first: int) -> tuple[float, float, float]:
-    """Return delta, g and dg/dy of the one polynomial in y^2, whose coefficients begin at `first`."""
+def nine(
+    z: float,
+    c0: float,
+    c1: float,
+    c2: float,
+    c3: float,
+    c4: float,
+    c5: float,
+    c6: float,
+    c7: float,
+    c8: float,
+) -> float:
+    """Return c0 + c1 z + ... + c8 z^8; coefficients as scalars, so that a loop over points keeps them in registers."""
+    s = fma(c8, z, c7)
+    s = fma(s, z, c6)
+    s = fma(s, z, c5)
+    s = fma(s, z, c4)
+    s = fma(s, z, c3)
+    s = fma(s, z, c2)
+    s = fma(s, z, c1)
+    return fma(s, z, c0)
+
+
+@inline_kernel
+def nine_at(where: int, first: int) -> tuple[float, float, float, float, float, float, float, float, float]:
+    """Return nine consecutive doubles."""
+    return (
+        load(where, first),
+        load(where, first + 1),
+        load(where, first + 2),
+        load(where, first + 3),
+        load(where, first + 4),
+        load(where, first + 5),
+        load(where, first + 6),
+        load(where, first + 7),
+        load(where, first + 8),
+    )
+
+
+@inline_kernel
+def smooth_point(where: int, y: float, first: int) -> tuple[float, float]:
+    """Return delta and g at one point."""
     z = y * y
-    d = load(where, first + 1 + SMOOTH_TERMS)
-    for k in range(SMOOTH_TERMS, 1, -1):
-        d = fma(d, z, load(where, first + k))
-    g = load(where, first + 1 + 2 * SMOOTH_TERMS)
-    u = 0.0
-    for k in range(2 * SMOOTH_TERMS, 1 + SMOOTH_TERMS, -1):
-        u = fma(u, z, g)
-        g = fma(g, z, load(where, first + k))
-    return d * y, g, 2.0 * y * u
+    c0, c1, c2, c3, c4, c5, c6, c7, c8 = nine_at(where, first + 2)
+    g0, g1, g2, g3, g4, g5, g6, g7, g8 = nine_at(where, first + 11)
+    d = y * nine(z, c0, c1, c2, c3, c4, c5, c6, c7, c8)
+    return d, nine(z, g0, g1, g2, g3, g4, g5, g6, g7, g8)
+
+
+@kernel
+def smooth_block(
+    where: int, size: int, first: int, want_slope: bool, y: FloatArray, d: FloatArray, g: FloatArray, u: FloatArray
+) -> None:
+    """Fill delta, g and, if wanted, dg/dy from the polynomials in y^2 whose coefficients begin at `first`."""
+    c0, c1, c2, c3, c4, c5, c6, c7, c8 = nine_at(where, first + 2)
+    g0, g1, g2, g3, g4, g5, g6, g7, g8 = nine_at(where, first + 11)
+    for n in range(size):
+        z = y[n] * y[n]
+        d[n] = y[n] * nine(z, c0, c1, c2, c3, c4, c5, c6, c7, c8)
+    for n in range(size):
+        g[n] = nine(y[n] * y[n], g0, g1, g2, g3, g4, g5, g6, g7, g8)
+    if want_slope:
+        for n in range(size):
+            z = y[n] * y[n]
+            v = nine(z, g1, 2.0 * g2, 3.0 * g3, 4.0 * g4, 5.0 * g5, 6.0 * g6, 7.0 * g7, 8.0 * g8, 0.0)
+            u[n] = 2.0 * y[n] * v
 
 
 @inline_kernel
@@ -157,12 +216,18 @@ def near_pair(where: int, x: float, low: float, want_slope: bool) -> tuple[float
     slope = 0.0
     if x < load(where, X_SERIES):
         z = 0.25 * x * x
-        s = 1.0
+        z2 = z * z
+        even = load(where, SERIES_START + 13)
+        odd = load(where, SERIES_START + 12)
+        for k in range(10, -1, -2):
+            even = fma(even, z2, load(where, SERIES_START + k + 1))
+            odd = fma(odd, z2, load(where, SERIES_START + k))
+        s = 1.0 + z * fma(even, z, odd)
         u = 0.0  # d s / d z
-        for k in range(13, -1, -1):
-            c = load(where, SERIES_START + k)
-            u = -c * fma(z, u, s)
-            s = fma(-z * c, s, 1.0)
+        if want_slope:
+            u = 14.0 * load(where, SERIES_START + 13)
+            for k in range(12, -1, -1):
+                u = fma(u, z, (k + 1.0) * load(where, SERIES_START + k))
         if nu == 0.0 and nu_low == 0.0:
             value = s - 0.5 * x * low
             slope = 0.5 * x * u + 0.5 * low * u
@@ -196,7 +261,7 @@ def huge_pair(where: int, x: float, low: float) -> tuple[float, float]:
     panels = load(where, PHASE_PANELS)
     y = load(where, X_PHASE) / x
     if panels == 0.0:
-        d, g, _ = smooth_parts(where, y, first)
+        d, g = smooth_point(where, y, first)
         c, c_low, p = load(where, first), load(where, first + 1), 0.0
     else:
         c, c_low, p, d, g, _ = panel_parts(where, y, 0.0, panels, first)
@@ -230,8 +295,7 @@ def phase_block(
         ch, cl = load(where, first), load(where, first + 1)
         for n in range(size):
             y[n] = start / x[n]
-        for n in range(size):
-            d[n], g[n], u[n] = smooth_parts(where, y[n], first)
+        smooth_block(where, size, first, want_slope, y, d, g, u)
         for n in range(size):
             k, h, l = reduced(x[n])
             s, e1 = two_sum(h, ch)
@@ -250,37 +314,42 @@ def phase_block(
             s, e2 = two_sum(s, p[n])
             s, e3 = two_sum(s, d[n])
             sines[n], out[n] = sine_cosine(k, s, l + e1 + e2 + e3 + (e[n] + low[n]))
+    scale = TWO_OVER_PI / start  # 2/(pi x) = y scale
     if want_slope:
         for n in range(size):
-            root = math.sqrt(TWO_OVER_PI / x[n])
+            root = math.sqrt(y[n] * scale)
             out[n] = g[n] * out[n] * root
             slope[n] = -(sines[n] / g[n]) * root - out[n] * ((0.5 + y[n] * u[n] / g[n]) / x[n])
     else:
         for n in range(size):
-            out[n] = g[n] * out[n] * math.sqrt(TWO_OVER_PI / x[n])
+            out[n] = g[n] * out[n] * math.sqrt(y[n] * scale)
 
 
 @kernel
 def panel_block(
     where: int,
     size: int,
+    index: IntArray,
     x: FloatArray,
     low: FloatArray,
     want_slope: bool,
     out: FloatArray,
     slope: FloatArray,
 ) -> None:
-    """Fill out and slope for x0 <= x < X."""
+    """Fill out and slope at the `size` points listed in `index`, x0 <= x < X."""
     x0, inverse, width = load(where, X0), load(where, INVERSE_WIDTH), load(where, WIDTH)
-    for n in range(size):
+    for j in range(size):
+        n = index[j]
         out[n] = panel_value(where, x[n], low[n], x0, inverse, width)
     if want_slope:
-        for n in range(size):
+        for j in range(size):
+            n = index[j]
             slope[n] = panel_slope(where, x[n], low[n], x0, inverse, width)
     scaled = load(where, SCALED)
     if scaled > 0.0:
         end = x0 + scaled * width
-        for n in range(size):
+        for j in range(size):
+            n = index[j]
             if x[n] < end:
                 out[n] *= UNSCALE
                 if want_slope:
@@ -297,8 +366,9 @@ def evaluate(
     block = min(BLOCK, max(x.size, 1))
     work = np.empty((ROWS, block))
     zero = np.zeros(block)
-    inside = np.empty(block, np.int64)
-    beyond = np.empty(block, np.int64)
+    index = np.empty((3, block + 1), np.int64)
+    inside, beyond, others = index[0], index[1], index[2]
+    px, pl, po, ps = work[8], work[9], work[10], work[11]
     for begin in range(0, x.size, block):
         size = min(block, x.size - begin)
         xs = x[begin : begin + size]
@@ -307,33 +377,23 @@ def evaluate(
         there = slope[begin : begin + size] if want_slope else here
         i = 0
         b = 0
+        o = 0
         for n in range(size):
             inside[i] = n
             beyond[b] = n
-            i_here = (xs[n] >= x0) & (xs[n] < start)
-            b_here = (xs[n] >= start) & (xs[n] < LARGE)
-            i += i_here
-            b += b_here
-            if i == block or b == block:
-                break
-        if i == size:
-            panel_block(where, size, xs, ls, want_slope, here, there)
-            continue
+            others[o] = n
+            far = xs[n] >= start
+            huge = xs[n] >= LARGE
+            panel = (xs[n] >= x0) & (not far)
+            phase = far & (not huge)
+            i += panel
+            b += phase
+            o += not (panel | phase)
+        if i > 0:
+            panel_block(where, i, inside, xs, ls, want_slope, here, there)
         if b == size:
             phase_block(where, size, xs, ls, work, want_slope, here, there)
-            continue
-        px, pl, po, ps = work[8], work[9], work[10], work[11]
-        if i > 0:
-            for j in range(i):
-                px[j] = xs[inside[j]]
-                pl[j] = ls[inside[j]]
-            panel_block(where, i, px, pl, want_slope, po, ps)
-            for j in range(i):
-                here[inside[j]] = po[j]
-            if want_slope:
-                for j in range(i):
-                    there[inside[j]] = ps[j]
-        if b > 0:
+        elif b > 0:
             for j in range(b):
                 px[j] = xs[beyond[j]]
                 pl[j] = ls[beyond[j]]
@@ -343,16 +403,15 @@ def evaluate(
             if want_slope:
                 for j in range(b):
                     there[beyond[j]] = ps[j]
-        if i + b < size:
-            for n in range(size):
-                if not (xs[n] >= x0 and xs[n] < LARGE):
-                    if xs[n] >= LARGE:
-                        v, s = huge_pair(where, xs[n], ls[n])
-                    else:
-                        v, s = near_pair(where, xs[n], ls[n], want_slope)
-                    here[n] = v
-                    if want_slope:
-                        there[n] = s
+        for j in range(o):
+            n = others[j]
+            if xs[n] >= LARGE:
+                v, s = huge_pair(where, xs[n], ls[n])
+            else:
+                v, s = near_pair(where, xs[n], ls[n], want_slope)
+            here[n] = v
+            if want_slope:
+                there[n] = s
 
 
 @kernel

@@ -14,7 +14,7 @@ from fbexpand.kernels.bessel_eval import (
     panel_value,
     reduced,
     sine_cosine,
-    smooth_parts,
+    smooth_point,
 )
 from fbexpand.kernels.bessel_table import (
     INVERSE_WIDTH,
@@ -42,7 +42,7 @@ def phase_point(where: int, x: float) -> float:
     p = 0.0
     if panels == 0.0:
         c, e = load(where, first), load(where, first + 1)
-        d, g, _ = smooth_parts(where, y, first)
+        d, g = smooth_point(where, y, first)
     else:
         c, e, p, d, g, _ = panel_parts(where, y, fma(-y, x, start) / x, panels, first)
     k, h, low = reduced(x)
@@ -55,7 +55,7 @@ def phase_point(where: int, x: float) -> float:
         s, e3 = two_sum(s, d)
         low = low + e1 + e2 + e3 + e
     _, cosine = sine_cosine(k, s, low)
-    return g * cosine * math.sqrt(TWO_OVER_PI / x)
+    return g * cosine * math.sqrt(y * (TWO_OVER_PI / start))
 
 
 @kernel

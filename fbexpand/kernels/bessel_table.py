@@ -35,7 +35,7 @@ PHASE_PANELS, X_SERIES, LOG_C, LOG_C_LOW, PHASE_START, MISMATCH = 8, 9, 10, 11, 
 SERIES_START, SERIES_TERMS = 16, 16
 PANEL_START, PANEL_TERMS = 32, 16
 PHASE_TERMS = 20  # a panel: constant (2), linear (2), delta_2..8 (7), g_0..8 (9)
-SMOOTH_TERMS = 9  # no panels: constant (2), delta/y in powers of y^2 (9), g likewise (9)
+# where there are no panels: constant (2), delta/y in powers of y^2 (9), g likewise (9)
 SMOOTH_ORDER = 14.0
 _SMOOTH_SERIES = 26
 SCALE = 2.0**640  # panels where J is near underflow are kept multiplied by this
@@ -143,11 +143,12 @@ def _prepare(data: FloatArray) -> tuple[float, float]:
     gh, gl = dd_log_gamma1(nh, nl)
     ph, pl = dd_mul(nh, nl, LN2_1, LN2_2)
     data[LOG_C], data[LOG_C_LOW] = dd_add(ph, pl, gh, gl)  # x^nu / (2^nu Gamma(nu + 1))
-    for k in range(SERIES_TERMS):
+    qh, ql = 1.0, 0.0
+    for k in range(SERIES_TERMS):  # (-1)^k / (k! (nu + 1)_k), k from 1
         dh, dl = dd_add_d(nh, nl, k + 1.0)
-        dh, dl = dd_mul_d(dh, dl, k + 1.0)
-        dh, dl = dd_div(1.0, 0.0, dh, dl)
-        data[SERIES_START + k] = dh
+        dh, dl = dd_mul_d(dh, dl, -(k + 1.0))
+        qh, ql = dd_div(qh, ql, dh, dl)
+        data[SERIES_START + k] = qh
     return gh, gl
 
 

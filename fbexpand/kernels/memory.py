@@ -1,4 +1,4 @@
-"""Reading a table through its address, so that a scalar function called in a loop counts no references.
+"""Reading a table through its address, so that a scalar function called in a loop counts no references; bits of doubles.
 
 An array passed to a compiled function that branches costs two atomic updates of its reference count a call, six times
 the arithmetic of a panel. The caller holds the array; only `load` at indices the table's own header names is used.
@@ -6,6 +6,7 @@ the arithmetic of a panel. The caller holds the array; only `load` at indices th
 
 from __future__ import annotations
 
+import struct
 from typing import Any
 
 from fbexpand.kernels.jit import JIT_DISABLED
@@ -19,6 +20,14 @@ if JIT_DISABLED:
     def load(where: Any, index: Any) -> float:
         """Return element `index`."""
         return float(where[int(index)])
+
+    def to_bits(x: float) -> int:
+        """Return the 64 bits of a double as an integer."""
+        return int(struct.unpack("<q", struct.pack("<d", x))[0])
+
+    def from_bits(bits: int) -> float:
+        """Return the double with these 64 bits."""
+        return float(struct.unpack("<d", struct.pack("<q", bits))[0])
 
 else:
     from llvmlite import ir
@@ -44,3 +53,21 @@ else:
             return builder.load(builder.gep(pointer, [args[1]]))
 
         return types.float64(types.intp, types.intp), codegen
+
+    @intrinsic
+    def to_bits(typingctx: Any, x: Any) -> Any:
+        """Return the 64 bits of a double as an integer."""
+
+        def codegen(context: Any, builder: Any, signature: Any, args: Any) -> Any:
+            return builder.bitcast(args[0], ir.IntType(64))
+
+        return types.int64(types.float64), codegen
+
+    @intrinsic
+    def from_bits(typingctx: Any, bits: Any) -> Any:
+        """Return the double with these 64 bits."""
+
+        def codegen(context: Any, builder: Any, signature: Any, args: Any) -> Any:
+            return builder.bitcast(args[0], ir.DoubleType())
+
+        return types.float64(types.int64), codegen

@@ -11,7 +11,8 @@ from decimal import Context, Decimal
 import numpy as np
 
 from fbexpand.kernels.dd import fma, quick_two_sum, two_prod, two_sum
-from fbexpand.kernels.jit import kernel
+from fbexpand.kernels.jit import inline_kernel, kernel
+from fbexpand.kernels.memory import from_bits, to_bits
 
 _DIGITS = Context(prec=50)
 _LN2 = _DIGITS.ln(Decimal(2))
@@ -49,14 +50,20 @@ EXP_TABLE = np.array(_exp_table())
 LN2_HIGH, LN2_LOW = _leading(_LN2, 30)
 LN2_32_HIGH, LN2_32_LOW = _leading(_LN2 / 32, 30)
 INV_LN2_32 = float(32 / _LN2)
+_MANTISSA = (1 << 52) - 1
+_ONE = 1023 << 52
 
 
-@kernel
+@inline_kernel
 def log_two_part(x: float) -> tuple[float, float]:
     """Return log(x), x > 0, in two parts; absolute error about 1e-20 (1 + |log x| / 100)."""
-    m, e = math.frexp(x)
-    m *= 2.0
-    e -= 1
+    e = -1023
+    if x < 2.3e-308:  # subnormal
+        x *= 18014398509481984.0
+        e -= 54
+    bits = to_bits(x)
+    e += bits >> 52
+    m = from_bits((bits & _MANTISSA) | _ONE)
     j = int((m - 1.0) * 64.0)
     p, q = two_prod(m, LOG_TABLE[3 * j])
     r = p - 1.0
@@ -69,7 +76,7 @@ def log_two_part(x: float) -> tuple[float, float]:
     return quick_two_sum(s, low)
 
 
-@kernel
+@inline_kernel
 def exp_two_part(h: float, l: float) -> float:
     """Return exp(h + l) with gradual underflow, 0 below it and inf above."""
     if h < -760.0:
@@ -87,7 +94,7 @@ def exp_two_part(h: float, l: float) -> float:
     t = float(EXP_TABLE[2 * j])
     v = t + (EXP_TABLE[2 * j + 1] + t * p)
     half = e >> 1
-    return v * math.ldexp(1.0, half) * math.ldexp(1.0, e - half)
+    return v * from_bits((half + 1023) << 52) * from_bits((e - half + 1023) << 52)
 
 
 @kernel

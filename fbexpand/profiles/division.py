@@ -153,7 +153,7 @@ def _missed(judge: Judge, look: FirstLook, on_scan: Numeric, done: list[Piece]) 
         start, stop = np.searchsorted(look.scan, (piece.low, piece.high))
         if start == stop:
             continue
-        t = chebyshev.local(look.scan[start:stop], np.float64(piece.low), np.float64(piece.high))
+        t = chebyshev.local(look.scan[start:stop], np.array(piece.low), np.array(piece.high))
         values = piece.coefficients @ chebyshev.evaluation(t, DEGREES)
         misses = np.abs(values - on_scan[:, start:stop]).max(axis=1)
         wrong = misses > judge.allowed(piece.height, piece.level)

@@ -5,11 +5,10 @@ from __future__ import annotations
 from dataclasses import dataclass
 
 import numpy as np
-from scipy.interpolate import CubicSpline, PchipInterpolator
 
 from fbexpand.types import FloatArray, Numeric
 
-MIRRORED = 24  # radii repeated on the other side of the axis: a spline feels no more than those
+MIRRORED = 24  # radii repeated on the other side of the axis: a spline hardly feels more than those
 
 # powers 1, s, s^2, s^3 of s in [0, 1] in Chebyshev polynomials of t = 2 s - 1
 POWERS = np.array([[1.0, 0.0, 0.0, 0.0], [0.5, 0.5, 0.0, 0.0], [0.375, 0.5, 0.125, 0.0], [10.0, 15.0, 6.0, 1.0]])
@@ -68,6 +67,12 @@ def interpolate(between: str, knots: Knots) -> Numeric:
 
 def cubic(knots: Knots) -> Numeric:
     """Return the spline."""
+    from scipy.interpolate import CubicSpline  # slow to import, and only tables need it
+
+    if knots.parity and not knots.to_axis and knots.r.size > MIRRORED:
+        at_axis = (1 if knots.parity > 0 else 2, np.zeros(knots.values.shape[0]))
+        spline = CubicSpline(knots.r, knots.values, axis=1, bc_type=(at_axis, "not-a-knot"))
+        return _cells(knots, knots.r, 0, spline.c, continued=True)
     r, values, before = knots.across(MIRRORED)
     spline = CubicSpline(r, values, axis=1)
     return _cells(knots, r, before, spline.c, continued=True)
@@ -75,6 +80,8 @@ def cubic(knots: Knots) -> Numeric:
 
 def monotone(knots: Knots) -> Numeric:
     """Return the piecewise cubic without overshoot."""
+    from scipy.interpolate import PchipInterpolator
+
     r, values, before = knots.across(2)
     if np.iscomplexobj(values):
         c: Numeric = PchipInterpolator(r, values.real, axis=1).c + 1j * PchipInterpolator(r, values.imag, axis=1).c

@@ -9,7 +9,7 @@ from numpy.polynomial import legendre
 
 from fbexpand.profiles import chebyshev
 from fbexpand.records import ReadOnlyArrays
-from fbexpand.types import ArrayLike, FloatArray, Numeric
+from fbexpand.types import ArrayLike, FloatArray, IntArray, Numeric
 
 POINTS_AT_ONCE = 1 << 20  # numbers held at once while evaluating
 
@@ -46,7 +46,7 @@ class Panels(ReadOnlyArrays):
         """Return the values at one-dimensional radii r, shape (*batch, m)."""
         radii = np.asarray(r, dtype=np.float64)
         rows = self.rows()
-        panel = np.clip(np.searchsorted(self.edges, radii, side="right") - 1, 0, self.edges.size - 2)
+        panel: IntArray = np.clip(np.searchsorted(self.edges, radii, side="right") - 1, 0, self.edges.size - 2)
         t = chebyshev.local(radii, self.edges[panel], self.edges[panel + 1])
         out = np.empty((rows.shape[0], radii.size), dtype=rows.dtype)
         step = max(1, POINTS_AT_ONCE // max(1, rows.shape[0]))
@@ -68,7 +68,7 @@ class Panels(ReadOnlyArrays):
         return np.asarray(unit * np.sqrt(square)).reshape(self.batch_shape)
 
 
-def _clenshaw(rows: Numeric, panel: FloatArray, t: FloatArray) -> Numeric:
+def _clenshaw(rows: Numeric, panel: IntArray, t: FloatArray) -> Numeric:
     """Sum the panels' series at t, shape (size, m)."""
     ahead = after = np.zeros((rows.shape[0], t.size), dtype=rows.dtype)
     twice = 2.0 * t

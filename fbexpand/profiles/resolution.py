@@ -9,7 +9,6 @@ difference is raised. The other interpolants are compared with the cubic, whose 
 from __future__ import annotations
 
 import numpy as np
-from scipy.interpolate import make_interp_spline
 
 from fbexpand.profiles import chebyshev
 from fbexpand.profiles.interpolants import MIRRORED, Knots, cubic, linear
@@ -20,6 +19,7 @@ RAISED = 25.0  # times what the two differences have in common
 ALIKE = 0.6  # their ratio, at most
 MOST = 12.0  # times the difference from the broken line: the error is not more
 FEWEST = 6  # radii for a degree of five
+KNOWN = 4  # radii from which a difference of interpolants says something
 COLUMNS = 1 << 20  # numbers held at once
 
 
@@ -39,14 +39,19 @@ def _columns(knots: Knots, chosen: slice) -> Knots:
 
 
 def _error(between: str, knots: Knots, coefficients: Numeric) -> FloatArray:
+    from scipy.interpolate import make_interp_spline
+
     unit = np.abs(knots.values).max(axis=1)
     unit = np.where(unit > 0.0, unit, 1.0)[:, None, None]
     spline = coefficients if between == "cubic" else cubic(knots)
-    line = _values(linear(knots), knots) / unit
+    straight = linear(knots)
+    line = _values(straight, knots) / unit
     values = _values(spline, knots) / unit
     broken = _norms(values - line, knots)  # of every cell
     r, table, _ = knots.across(MIRRORED)
-    if r.size < FEWEST:
+    if knots.r.size < KNOWN:  # curvature is not known: as much may be wrong as the table rises
+        found = np.maximum(broken, _norms(line - straight[:, :, :1] / unit, knots))
+    elif r.size < FEWEST:
         found = broken
     else:
         smooth = make_interp_spline(r, table, k=5, axis=1)(_radii(knots).ravel()).reshape(values.shape) / unit
@@ -80,8 +85,8 @@ def _values(coefficients: Numeric, knots: Knots) -> Numeric:
 def _norms(values: Numeric, knots: Knots) -> FloatArray:
     """Return the L2 norm on every cell, (size, cells)."""
     weights = 0.5 * np.diff(knots.edges)[:, None] * _w * _radii(knots)
-    return np.sqrt(np.sum(np.abs(values) ** 2 * weights, axis=2))
+    return np.asarray(np.sqrt(np.sum(np.abs(values) ** 2 * weights, axis=2)))
 
 
 def _total(norms: FloatArray) -> FloatArray:
-    return np.sqrt(np.sum(norms**2, axis=1))
+    return np.asarray(np.sqrt(np.sum(norms**2, axis=1)))

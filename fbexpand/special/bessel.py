@@ -76,9 +76,14 @@ def _few(order: float, order_low: float, x: FloatArray, low: FloatArray, out: Fl
     return True
 
 
+def _plain(x: Any) -> FloatArray:
+    """Return x as the kernels take it: one-dimensional, contiguous, writable; copied only if it is not."""
+    array = np.ascontiguousarray(x, dtype=np.float64)
+    return (array if array.flags.writeable and array.flags.aligned else array.copy()).reshape(-1)
+
+
 def _flat(x: FloatArray, x_low: FloatArray | None) -> tuple[FloatArray, FloatArray]:
-    low = _NO_LOW if x_low is None else np.array(x_low, dtype=np.float64, order="C").ravel()
-    return np.array(x, dtype=np.float64, order="C").ravel(), low
+    return _plain(x), _NO_LOW if x_low is None else _plain(x_low)
 
 
 def bessel_pair_at(
