@@ -142,5 +142,5 @@ def storable(name: str, value: Any, size: int) -> None:
     except (AttributeError, ValueError, OSError):  # no such question on this platform
         limit = 1 << 40
     if size > limit:
-        what = f"small enough for the machine's memory, {size / 1e9:.3g} GB would be needed"
+        what = f"small enough for the machine's memory, {min(size, 10**300) / 1e9:.3g} GB would be needed"
         raise value_error(name, what, value)

@@ -1,202 +1,215 @@
-"""Profiles whose integrals against J_nu(lambda x) x or I_nu(mu x) x are known, in ball arithmetic.
+"""Profiles whose integrals against the modes are known in closed form, and those integrals in ball arithmetic.
 
-Every profile lives on the unit radius and is given twice: as a NumPy function, and as the exact integral
-over [0, 1] for a root of any size. The integrals are
-
-- of powers, x^(a+1) J_nu(z x), by the power series of J, which covers polynomials and Gaussians;
-- Sonine's first finite integral, for x^nu (1 - x^2)^m (Watson, Bessel Functions, 12.11);
-- Lommel's, for products of two Bessel functions (Watson 5.11);
-- over part of the radius, for steps (Watson 5.1);
-- of log x at order 0, by parts.
+Every profile is a function of x = r/R and the order nu; its integral of f phi_k x dx over [0, 1] is written
+with q(m, a) = C_{nu+m}(lambda a) / (lambda^m scale), C = J or I, with A = 2^nu Gamma(nu + 1) lim phi_k / x^nu
+at the axis, and with the eigenvalue e. Written so, the formulas hold for an oscillating, a zero and a growing
+mode alike. Sources (from memory): Sonine's first and second finite integrals, Watson, Theory of Bessel
+functions, 12.11 and 12.13; Lommel's integrals, Watson 5.11; the Gaussian, DLMF 10.22.51; powers by
+term-by-term integration; the logarithm by parts.
 """
 
 from __future__ import annotations
 
-from functools import lru_cache
+from collections.abc import Callable
+from typing import NamedTuple
 
 import mpmath as mp
 import numpy as np
-from basis_references import from_ball, to_ball
-from flint import arb, ctx
+from basis_references import ReferenceBasis, cylinder, from_ball, to_ball
+from flint import ctx
+from scipy.special import j0, j1
 
 
-def working_bits(z):
-    """Enough for the cancellation in a series whose terms reach exp(z)."""
-    return int(1.6 * float(z)) + 260
+class Mode:
+    """The k-th mode of a reference basis on the unit radius."""
+
+    def __init__(self, reference: ReferenceBasis, k: int) -> None:
+        self.nu = mp.mpf(reference.order)
+        self.root, self.sigma = reference.root(k), reference.sigma(k)
+        self.eigenvalue = -self.sigma * self.root**2
+        self.norm = reference.norm(k)
+        self.scale = mp.mpf(1)
+        self._known = {}
+        if reference.scaled(k) and self.root:
+            self.scale = cylinder(self.sigma, self.nu, self.root)[0]
+
+    def q(self, m, a=1):
+        """C_{nu+m}(lambda a) / (lambda^m scale)."""
+        m, a = mp.mpf(m), mp.mpf(a)
+        if (m, a) not in self._known:
+            if self.root:
+                value = cylinder(self.sigma, self.nu + m, self.root * a)[0] / self.root**m / self.scale
+            else:
+                value = a ** (self.nu + m) * mp.gamma(self.nu + 1) / (2**m * mp.gamma(self.nu + m + 1))
+            self._known[m, a] = value
+        return self._known[m, a]
+
+    @property
+    def axis(self):
+        """2^nu Gamma(nu + 1) times the limit of phi_k / x^nu at the axis."""
+        return self.root**self.nu / self.scale if self.root else 2**self.nu * mp.gamma(self.nu + 1)
 
 
-def checked(ball, size):
-    """The ball's middle, after making sure that 90 bits of `size` are right."""
-    assert float(ball.rad()) <= float(size) * 2.0**-90, ball
-    return from_ball(ball)
+def entire(order, square):
+    """J_order(w) / w^order as a function of w^2 of either sign."""
+    w = mp.sqrt(abs(square))
+    return cylinder(-1 if square > 0 else 1, order, w)[0] / w**order
 
 
-@lru_cache(maxsize=4096)
-def _series(sigma, order, z):
-    """The coefficients of (z/2)^(2j + order) in the series of J (sigma = -1) or I, as balls with z in them."""
-    ctx.prec = working_bits(z)
-    nu, half = to_ball(order), to_ball(z) / 2
-    square = half * half * sigma
-    term = half ** (nu) / (nu + 1).gamma()
-    terms = []
-    j = 0
-    limit = arb(2) ** -ctx.prec
-    while True:
-        terms.append(term)
-        j += 1
-        term = term * square / (j * (nu + j))
-        if j > float(z) and abs(term) < limit:
-            return terms
+def power_series(numerator, first, second, z):
+    """1F2(numerator; first, second; z) by ball arithmetic."""
+    working = 256
+    while working < 100_000:
+        ctx.prec = working
+        ball = to_ball(z).hypgeom([to_ball(numerator)], [to_ball(first), to_ball(second)])
+        if ball.rel_accuracy_bits() >= 150:
+            return from_ball(ball)
+        working *= 2
+    raise ArithmeticError("no accuracy")
 
 
-def power(sigma, order, z, a):
-    """integral_0^1 x^(a + 1) C(z x) dx for C = J_order or I_order."""
-    terms = _series(sigma, float(order), mp.mpf(z))
-    ctx.prec = working_bits(z)
-    start = to_ball(order) + to_ball(a) + 2
-    total = arb(0)
-    for j, term in enumerate(terms):
-        total += term / (start + 2 * j)
-    return total
+class ClosedForm(NamedTuple):
+    """A profile of x and nu; its integral against a mode; where it jumps; whether it suits order and growth."""
+
+    profile: Callable
+    integral: Callable
+    breaks: tuple[float, ...] = ()
+    applies: Callable = lambda order, robin: True
 
 
-def cylinder_ball(sigma, order, z, shift=0):
-    """J or I of order + shift at z."""
-    ctx.prec = working_bits(z)
-    nu = to_ball(order) + shift
-    return to_ball(z).bessel_j(nu) if sigma < 0 else to_ball(z).bessel_i(nu)
+def step(low, high):
+    """x^nu between two radii, 0 elsewhere."""
+
+    def integral(mode):
+        outer = mp.mpf(high) ** (mode.nu + 1) * mode.q(1, high)
+        return outer - (mp.mpf(low) ** (mode.nu + 1) * mode.q(1, low) if low else 0)
+
+    return ClosedForm(
+        lambda x, nu: np.where((x > low) & (x < high), x**nu, 0.0),
+        integral,
+        tuple(x for x in (low, high) if 0.0 < x < 1.0),
+    )
 
 
-class Power:
-    """x^a, a real."""
+def sonine_first(p, a=1.0):
+    """x^nu (a^2 - x^2)^p up to a, 0 beyond."""
 
-    def __init__(self, a, times=1.0):
-        self.a, self.times = a, times
+    def integral(mode):
+        return 2 ** mp.mpf(p) * mp.gamma(p + 1) * mp.mpf(a) ** (mode.nu + p + 1) * mode.q(p + 1, a)
 
-    def __call__(self, x):
-        return self.times * x**self.a
-
-    def integral(self, sigma, order, z):
-        return to_ball(self.times) * power(sigma, order, z, self.a)
-
-
-class Polynomial:
-    """sum c_i x^(a_i)."""
-
-    def __init__(self, **terms):
-        self.parts = [Power(float(name[1:].replace("_", ".")), c) for name, c in terms.items()]
-
-    def __call__(self, x):
-        return sum(part(x) for part in self.parts)
-
-    def integral(self, sigma, order, z):
-        return sum((part.integral(sigma, order, z) for part in self.parts), arb(0))
+    return ClosedForm(
+        lambda x, nu: x**nu * np.where(x < a, np.maximum((a - x) * (a + x), 0.0) ** p, 0.0),
+        integral,
+        (a,) if a < 1.0 else (),
+    )
 
 
-class Gaussian:
-    """x^a exp(-s x^2), for s up to about 10."""
+def sonine_second(mu, b):
+    """x^nu (1 - x^2)^(mu/2) J_mu(b sqrt(1 - x^2)), mu = 0 or 1: smooth at the rim."""
 
-    def __init__(self, s, a=0.0):
-        self.s, self.a = s, a
+    def profile(x, nu):
+        w = np.sqrt((1.0 - x) * (1.0 + x))
+        return x**nu * (j0(b * w) if mu == 0 else w * j1(b * w))
 
-    def __call__(self, x):
-        return x**self.a * np.exp(-self.s * x * x)
-
-    def integral(self, sigma, order, z):
-        total, factor = arb(0), arb(1)
-        for m in range(110):
-            total += factor * power(sigma, order, z, self.a + 2 * m)
-            factor *= -to_ball(self.s) / (m + 1)
-        return total
+    return ClosedForm(
+        profile,
+        lambda mode: mode.axis * mp.mpf(b) ** mu * entire(mode.nu + mu + 1, mode.eigenvalue + mp.mpf(b) ** 2),
+    )
 
 
-class Sonine:
-    """x^order (1 - x^2)^m, m > -1."""
+def lommel(square):
+    """Gamma(nu + 1) (2/b)^nu times J_nu(b x) (square = -b^2) or I_nu(b x) (square = b^2)."""
 
-    def __init__(self, m):
-        self.m = m
+    def profile(x, nu):
+        t = square * x * x / 4.0
+        total, term = np.ones_like(x), np.ones_like(x)
+        for m in range(1, 60):
+            term = term * t / (m * (m + nu))
+            total = total + term
+        return x**nu * total
 
-    def at_order(self, order):
-        return lambda x: x**order * ((1.0 - x) * (1.0 + x)) ** self.m
+    def integral(mode):
+        b, sign = mp.sqrt(abs(mp.mpf(square))), 1 if square > 0 else -1
+        value, above = (cylinder(sign, order, b)[0] for order in (mode.nu, mode.nu + 1))
+        numerator = mode.eigenvalue * mode.q(1) * value + sign * b * above * mode.q(0)
+        return mp.gamma(mode.nu + 1) * (2 / b) ** mode.nu * numerator / (mode.eigenvalue + square)
 
-    def integral(self, sigma, order, z):
-        value = cylinder_ball(sigma, order, z, to_ball(self.m) + 1)
-        m = to_ball(self.m)
-        return arb(2) ** (m) * (m + 1).gamma() * value / to_ball(z) ** (m + 1)
-
-
-class Lommel:
-    """J_order(b x)."""
-
-    def __init__(self, b):
-        self.b = b
-
-    def at_order(self, order):
-        from scipy.special import jv
-
-        return lambda x: jv(order, self.b * x)
-
-    def integral(self, sigma, order, z):
-        ctx.prec = working_bits(z)
-        b, w, nu = to_ball(self.b), to_ball(z), to_ball(order)
-        jb, jb1 = b.bessel_j(nu), b.bessel_j(nu + 1)
-        c, c1 = cylinder_ball(sigma, order, z), cylinder_ball(sigma, order, z, 1)
-        # x J_nu(b x) C_nu(w x), integrated: (b J_{nu+1}(b) C(w) + sigma w J(b) C_{nu+1}(w)) / (b^2 + sigma w^2)
-        return (b * jb1 * c + sigma * w * jb * c1) / (b * b + sigma * w * w)
+    return ClosedForm(profile, integral)
 
 
-class Step:
-    """x^order inside x < edge, 0 outside."""
+def gaussian(s):
+    """x^nu exp(-s x^2), s real or complex: expanded in powers of 1 - x^2, each of them Sonine's."""
 
-    def __init__(self, edge):
-        self.edge = edge
+    def integral(mode):
+        z, total, factor = mp.mpmathify(s), mp.mpf(0), mp.mpf(1)
+        for m in range(200):
+            added = factor * mode.q(m + 1)
+            total += added
+            if m > 4 and abs(added) < mp.mpf(10) ** -25 * abs(total):
+                break
+            factor *= 2 * z
+        return mp.exp(-z) * total
 
-    def at_order(self, order):
-        return lambda x: np.where(x < self.edge, x**order, 0.0)
-
-    def integral(self, sigma, order, z):
-        ctx.prec = working_bits(z)
-        edge, w = to_ball(self.edge), to_ball(z)
-        nu = to_ball(order)
-        inner = (w * edge).bessel_j(nu + 1) if sigma < 0 else (w * edge).bessel_i(nu + 1)
-        return edge ** (nu + 1) * inner / w
+    return ClosedForm(lambda x, nu: x**nu * np.exp(-s * x * x), integral)
 
 
-class Log:
+def narrow_gaussian(s):
+    """x^nu exp(-s x^2) with s so large that nothing is left at the rim: the integral to infinity."""
+    return ClosedForm(
+        lambda x, nu: x**nu * np.exp(-s * x * x),
+        lambda mode: mode.axis / mp.mpf(2 * s) ** (mode.nu + 1) * mp.exp(-mode.eigenvalue / (4 * mp.mpf(s))),
+        (),
+        lambda order, robin: order < 3.0 and robin > -50.0,  # else what is at the rim counts
+    )
+
+
+def power(beta):
+    """x^beta at whatever order: beta = 0 is the constant."""
+
+    def integral(mode):
+        total = mp.mpf(beta) + mode.nu + 2
+        series = power_series(total / 2, total / 2 + 1, mode.nu + 1, -mode.eigenvalue / 4)
+        return mode.axis / (2**mode.nu * mp.gamma(mode.nu + 1)) / total * series
+
+    # at a growth like exp(1e6) the series takes too long
+    return ClosedForm(lambda x, nu: x**beta, integral, (), lambda order, robin: robin > -1e5)
+
+
+def logarithm():
     """log x, at order 0."""
 
-    def __call__(self, x):
-        return np.log(x)
+    def integral(mode):
+        return (mode.q(0) - mode.axis) / mode.eigenvalue if mode.root else -mp.mpf(1) / 4
 
-    def integral(self, sigma, order, z):
-        assert order == 0.0
-        return sigma * (cylinder_ball(sigma, 0.0, z) - 1) / (to_ball(z) * to_ball(z)) * -1
+    return ClosedForm(lambda x, nu: np.log(x), integral, (), lambda order, robin: order == 0.0)
 
 
-def coefficient(reference, profile, k):
-    """c_k of a profile on a reference basis (basis_references.ReferenceBasis), and the norm, as mpf."""
-    z = reference.root(k)
-    norm = reference.norm(k)
-    sigma, order = reference.sigma(k), reference.order
-    if z == 0:  # the mode x^order
-        ctx.prec = 300
-        value = from_ball(zero_mode_integral(profile, order))
-    else:
-        ball = profile.integral(sigma, order, z)
-        value = from_ball(ball)
-        if reference.scaled(k):
-            height = from_ball(cylinder_ball(sigma, order, z))
-            value /= height
-            ball_error = mp.mpf(float(ball.rad())) / abs(height)
-        else:
-            ball_error = mp.mpf(float(ball.rad()))
-        assert ball_error <= mp.mpf(2) ** -80 * mp.sqrt(norm), (k, ball_error)
-    return value / norm, norm
+FORMS = {
+    "x^nu": step(0.0, 1.0),
+    "step at 0.3": step(0.0, 0.3),
+    "ring from 0.25 to 0.7": step(0.25, 0.7),
+    "x^nu (x^2 - 1/2)": ClosedForm(lambda x, nu: x**nu * (x * x - 0.5), lambda mode: mode.q(1) / 2 - 2 * mode.q(2)),
+    "x^nu (1 - x^2)": sonine_first(1.0),
+    "x^nu (1 - x^2)^3": sonine_first(3.0),
+    "x^nu (1 - x^2)^2.5": sonine_first(2.5),
+    "x^nu (1 - x^2)^0.5": sonine_first(0.5),
+    "x^nu (0.36 - x^2) to 0.6": sonine_first(1.0, 0.6),
+    "J_0(7 w), w^2 = 1 - x^2": sonine_second(0, 7.0),
+    "w J_1(5 w)": sonine_second(1, 5.0),
+    "J_nu(4 x)": lommel(-16.0),
+    "I_nu(3 x)": lommel(9.0),
+    "Gaussian, s = 3": gaussian(3.0),
+    "Gaussian, s = 2 + 7i": gaussian(2.0 + 7.0j),
+    "Gaussian, s = 60": narrow_gaussian(60.0),
+    "Gaussian, s = 4000": narrow_gaussian(4000.0),
+    "constant": power(0.0),
+    "x^0.01": power(0.01),
+    "x^0.7": power(0.7),
+    "x^2.5": power(2.5),
+    "log x": logarithm(),
+}
 
 
-def zero_mode_integral(profile, order):
-    """integral_0^1 f x^(order + 1) dx as the limit of the integrals for z -> 0, times Gamma(order + 1) (2/z)^order."""
-    z = mp.mpf(2) ** -120
-    ctx.prec = 900
-    scale = (to_ball(order) + 1).gamma() * (2 / to_ball(z)) ** (to_ball(order))
-    return profile.integral(-1, order, z) * scale
+def forms_for(order, robin):
+    """The profiles that suit a basis."""
+    return {name: form for name, form in FORMS.items() if form.applies(order, robin)}

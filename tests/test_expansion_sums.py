@@ -20,13 +20,13 @@ EPS = np.finfo(float).eps
 
 
 def ball_sums(order, radius, coefficients, r, derivative):
-    """The sum at r and the sum of the moduli, or of a derivative; roots by mpmath to 40 digits."""
+    """The sum at r and the sum of the moduli, or of a derivative; roots by mpmath, polished to 40 digits."""
     with mpmath.workdps(45):
         roots = [mpmath.besseljzero(order, k) for k in range(1, len(coefficients) + 1)]
-        roots = [flint.arb(mpmath.nstr(root, 42)) for root in roots]
     before = flint.ctx.prec
     flint.ctx.prec = 160
     try:
+        roots = [_polished(flint.arb(order), flint.arb(mpmath.nstr(root, 42))) for root in roots]
         nu, values, moduli = flint.arb(order), [], []
         for x in r:
             total = absolute = flint.arb(0)
@@ -40,6 +40,13 @@ def ball_sums(order, radius, coefficients, r, derivative):
     finally:
         flint.ctx.prec = before
     return np.array(values), np.array(moduli)
+
+
+def _polished(nu, z):
+    """Newton's steps in ball arithmetic; mpmath gives some zeros of real order to 16 digits only."""
+    for _ in range(3):
+        z = (z - z.bessel_j(nu) / _bessel(nu, z, 1)).mid()
+    return z
 
 
 def _bessel(nu, z, derivative):
@@ -59,6 +66,9 @@ def test_against_ball_arithmetic(order, derivative):
     e = Expansion(FourierBessel(order, 1.25), c)
     ours = e.derivative(r, derivative) if derivative else e(r)
     exact, moduli = ball_sums(order, 1.25, c, r, derivative)
+    if derivative == 0:
+        assert ours[25] == 0.0  # the rim, where the exact sum is 0 too
+        moduli[25] = 1.0
     worst = np.max(np.abs(ours - exact) / moduli) / EPS
     assert worst <= (8.0 if derivative else 4.0), f"{worst:.2f} eps of the sum of the moduli"
 

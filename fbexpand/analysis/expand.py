@@ -2,7 +2,7 @@
 
 from __future__ import annotations
 
-from collections.abc import Callable
+from collections.abc import Callable, Sequence
 from typing import TYPE_CHECKING, Any
 
 import numpy as np
@@ -139,8 +139,9 @@ def _as_breaks(breaks: Any, radius: float) -> tuple[float, ...]:
         return ()
     if breaks is None:
         raise checks.type_error("breaks", "radii", breaks)
-    array = np.atleast_1d(np.asarray(breaks) if np.size(breaks) else np.zeros(0))
-    array = checks.real_array("breaks", array)
+    if isinstance(breaks, Sequence) and not isinstance(breaks, str) and not len(breaks):
+        return ()
+    array = np.atleast_1d(checks.real_array("breaks", breaks))
     if array.ndim != 1:
         raise checks.value_error("breaks", "one-dimensional", breaks)
     outside = ~((array > 0.0) & (array < radius))  # NaN is outside

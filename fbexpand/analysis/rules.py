@@ -109,7 +109,8 @@ def jacobi_rule(count: int, power: float) -> tuple[FloatArray, FloatArray]:
     k, m = k[1:], m[1:]
     beside = 2.0 * k * (k + power) / (m * np.sqrt((m + 1.0) * (m - 1.0)))
     # the lower triangle of a dense matrix: it is small, and importing a tridiagonal solver takes longer
-    t: FloatArray = 0.5 * (1.0 + np.linalg.eigvalsh(np.diag(diagonal) + np.diag(beside, -1)))
+    eigenvalues = np.asarray(np.linalg.eigvalsh(np.diag(diagonal) + np.diag(beside, -1)), dtype=np.float64)
+    t = 0.5 * (1.0 + eigenvalues)
     weights = np.empty(count)
     refine_rule(power, t, weights)
     return t, weights

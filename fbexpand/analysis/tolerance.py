@@ -10,7 +10,8 @@ import numpy as np
 
 from fbexpand.analysis.quadrature import coefficients_of
 from fbexpand.estimates.origin import Origin
-from fbexpand.estimates.requirement import measure_l2, predicted_terms
+from fbexpand.estimates.requirement import MOST_TERMS, measure_l2, predicted_terms
+from fbexpand.estimates.residual import root_of_squares, tails
 from fbexpand.exceptions import TruncationWarning
 from fbexpand.expansion import Expansion
 from fbexpand.profiles.panels import Panels
@@ -19,12 +20,14 @@ from fbexpand.types import FloatArray, Numeric
 if TYPE_CHECKING:
     from fbexpand.bases import Basis
 
+BoolArray = np.ndarray[tuple[int, ...], np.dtype[np.bool_]]
+
 FIRST_TERMS = 32
-CERTAIN = 4.0  # times the tolerance: an error this much above it by Parseval's difference is above it
 BEST = 1.0 + 1e-6  # times the least error reached
-STOPPED = 0.9  # of the error with half the terms: it has stopped falling
+STOPPED = 0.8  # of the error with half the terms: it has stopped falling, even as slowly as beside a jump
 FLOOR = 1e-9  # of the norm: where that can only be rounding, in the sum or in the profile
-PARSEVAL = 1e-13  # of the norm squared: differences above it have digits
+PARSEVAL = 1e-9  # of the norm squared: a difference of squares above it has digits to spare
+MARGIN = 1.0 + 1e-4  # for those it lacks
 
 
 def series_to_tolerance(
@@ -35,10 +38,14 @@ def series_to_tolerance(
     limit = np.maximum(tol * norm, atol)
     terms = min(FIRST_TERMS, most)
     coefficients = coefficients_of(panels, basis, terms)
+    errors = np.full((1, norm.size), np.inf)
     while True:
-        if terms == most or not _far(coefficients, basis, norm, limit):
-            errors = measure_l2(basis, _origin(panels, coefficients))  # (terms, size), falling
-            if (errors[-1] <= limit).all() or terms == most or _settled(errors, norm, limit):
+        last = _by_parseval(coefficients, basis, norm)
+        if terms == most or not np.any(last > limit):
+            before = errors[-1]
+            errors = _errors(panels, basis, coefficients, last)
+            settled = (errors[-1] > STOPPED * before) & (errors[-1] <= FLOOR * norm)
+            if terms == most or np.all(settled | (errors[-1] <= limit)):
                 break
         more = min(terms, most - terms)
         added = coefficients_of(panels, basis, more, terms + 1)
@@ -51,8 +58,26 @@ def series_to_tolerance(
         basis, coefficients[..., :count], panels=panels, evaluations=panels.evaluations, table=table
     )
     if np.any(errors[-1] > limit):
-        _warn(basis, panels, coefficients, errors[-1], limit, norm)
+        _warn(basis, panels, coefficients, errors[-1], limit, norm, settled)
     return series
+
+
+def _by_parseval(coefficients: Numeric, basis: Basis, norm: FloatArray) -> FloatArray:
+    """Return the L2 error (size,) by |f|^2 - sum |b_k|^2 where that does not cancel, else 0."""
+    rows = np.abs(coefficients.reshape(norm.size, -1)) * np.sqrt(basis.norms(coefficients.shape[-1]))
+    unit = np.where(norm > 0.0, norm, 1.0)
+    missing = 1.0 - np.sum((rows / unit[:, None]) ** 2, axis=1)
+    return np.where((missing > PARSEVAL) & (norm > 0.0), MARGIN * norm * np.sqrt(np.maximum(missing, 0.0)), 0.0)
+
+
+def _errors(panels: Panels, basis: Basis, coefficients: Numeric, last: FloatArray) -> FloatArray:
+    """Return the L2 errors after 1, 2, ... terms, (terms, size); measured where `last` is 0."""
+    rows = coefficients.reshape(last.size, -1)
+    errors = root_of_squares(tails(basis, rows, range(1, rows.shape[1] + 1)), last)
+    unknown = np.flatnonzero(last == 0.0)
+    if unknown.size:
+        errors[:, unknown] = measure_l2(basis, _origin(panels, coefficients).take(unknown))
+    return errors
 
 
 def _origin(panels: Panels, coefficients: Numeric) -> Origin:
@@ -60,23 +85,14 @@ def _origin(panels: Panels, coefficients: Numeric) -> Origin:
     return Origin(coefficients, panels, zero, zero)
 
 
-def _far(coefficients: Numeric, basis: Basis, norm: FloatArray, limit: FloatArray) -> bool:
-    """Whether some profile's error is so far above its tolerance that Parseval's difference shows it."""
-    rows = np.abs(coefficients.reshape(norm.size, -1)) * np.sqrt(basis.norms(coefficients.shape[-1]))
-    unit = np.where(norm > 0.0, norm, 1.0)
-    missing = 1.0 - np.sum((rows / unit[:, None]) ** 2, axis=1)
-    return bool(np.any((missing > PARSEVAL) & (missing > (CERTAIN * limit / unit) ** 2) & (norm > 0.0)))
-
-
-def _settled(errors: FloatArray, norm: FloatArray, limit: FloatArray) -> bool:
-    """Whether every error above its tolerance has stopped falling, at the level of rounding."""
-    last, before = errors[-1], errors[errors.shape[0] // 2 - 1]
-    flat = (last > STOPPED * before) & (last <= FLOOR * norm)
-    return bool(np.all(flat | (last <= limit)))
-
-
 def _warn(
-    basis: Basis, panels: Panels, coefficients: Numeric, errors: FloatArray, limit: FloatArray, norm: FloatArray
+    basis: Basis,
+    panels: Panels,
+    coefficients: Numeric,
+    errors: FloatArray,
+    limit: FloatArray,
+    norm: FloatArray,
+    settled: BoolArray,
 ) -> None:
     """Warn about the profile that is furthest from its tolerance."""
     with np.errstate(divide="ignore", over="ignore"):
@@ -86,11 +102,11 @@ def _warn(
     reached = f"the L2 error{which} is {error:.3g} after {coefficients.shape[-1]} terms"
     if norm[row] > 0.0:
         reached += f" ({error / norm[row]:.3g} of its norm)"
-    predicted = predicted_terms(basis, _origin(panels, coefficients), row, error, wanted)
-    advice = (
-        f"by the law of its tail {predicted:.3g} terms would reach it"
-        if math.isfinite(predicted)
-        else "more terms will not lower it: it is at rounding"
-    )
+    if settled[row]:
+        advice = "more terms will not lower it: it is at rounding"
+    else:
+        predicted = predicted_terms(basis, _origin(panels, coefficients), row, error, wanted)
+        needed = f"{predicted:.3g}" if math.isfinite(predicted) else f"more than {MOST_TERMS:.0g}"
+        advice = f"by the law of its tail {needed} terms would reach it"
     message = f"the tolerance {wanted:.3g} was not reached: {reached}; {advice}"
     warnings.warn(message, TruncationWarning, stacklevel=4)

@@ -91,9 +91,9 @@ def crosscheck(
         off[i], within[i] = _compare_root(modes, k, roots[i], mode, expansion.terms)
     seconds = time.perf_counter() - start
     quadrature = theirs.reshape(*shape, chosen.size)
-    allowed = allowed.reshape(quadrature.shape)
+    bound = allowed.reshape(quadrature.shape)
     difference = np.abs(ours - quadrature)
-    agrees = (difference <= allowed) & (off <= within)
+    agrees = (difference <= bound) & (off <= within)
     return CrossCheck(
         basis=basis,
         terms=expansion.terms,
@@ -101,7 +101,7 @@ def crosscheck(
         ours=ours.copy(),
         quadrature=quadrature,
         difference=difference,
-        allowed=allowed,
+        allowed=bound,
         agrees=agrees,
         roots=roots,
         root_difference=off,

@@ -160,15 +160,16 @@ class OwnModes:
             return np.asarray(basis.modes(r, 1, k), dtype=np.float64)[..., 0]
 
         def spread(r: FloatArray, phi: FloatArray) -> FloatArray:
-            return 8.0 * EPS * (np.abs(phi) + np.max(np.abs(phi), initial=0.0))
+            return np.asarray(8.0 * EPS * (np.abs(phi) + np.max(np.abs(phi), initial=0.0)))
 
         root = float(basis.roots(1, k)[0])
         cuts = radius * np.arange(1, k) / k  # about where the mode changes sign: enough for quadrature
         return Mode(root, 0.0, lambda r: float(values(np.array([r]))[0]), values, spread, cuts)
 
     def mismatch(self, k: int, neighbour: int) -> float:
-        """Return how far the mode is from a multiple of J_nu(root r / R) (I_nu where it grows, r^nu at root 0) and from
-        orthogonality to a neighbour, both 0 where root and mode are right.
+        """Return how far the mode is from a multiple of J_nu(root r / R), or from orthogonality to a neighbour.
+
+        I_nu stands for J_nu where the mode grows, r^nu at root 0; both are 0 where root and mode are right.
         """
         x, w = np.polynomial.legendre.leggauss(8 * (max(k, neighbour) + 8))
         x = 0.5 * (x + 1.0)

@@ -70,13 +70,13 @@ def _lines(check: CrossCheck) -> list[str]:
     head = ("k", *(("profile",) if shape else ()), "root", "ours", "quadrature", "difference", "allowed", "")
     rows = [head]
     for i, row in _order(check):
-        where = np.unravel_index(row, shape) if shape else ()
-        place = (i,) if not shape else (*where, i)
+        where = tuple(int(w) for w in np.unravel_index(row, shape)) if shape else ()
+        place = (*where, i)
         root_bad = not check.root_difference[i] <= check.root_allowed[i]
         rows.append(
             (
                 str(check.indices[i]),
-                *((",".join(str(int(w)) for w in where),) if shape else ()),
+                *((",".join(str(w) for w in where),) if shape else ()),
                 f"{check.roots[i]:.10g}",
                 number(check.ours[place]),
                 number(check.quadrature[place]),

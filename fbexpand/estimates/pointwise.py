@@ -10,7 +10,6 @@ from collections.abc import Callable
 from typing import TYPE_CHECKING
 
 import numpy as np
-from scipy.ndimage import maximum_filter1d
 
 from fbexpand.estimates.cells import cells_of, fine_widths, half_wave, panel_of, panel_values
 from fbexpand.estimates.extrapolation import block_ends, blocks_of, sup_beyond
@@ -61,6 +60,8 @@ def windowed(
             beside = moduli(marks)
             for i, place in enumerate(np.rint(marks / radius * steps).astype(np.int64)):
                 values[..., place] = np.maximum(values[..., place], beside[..., i])
+        from scipy.ndimage import maximum_filter1d  # a fifth of a second to import: only when asked for
+
         values = maximum_filter1d(values, 2 * spread + 3, axis=-1, mode="nearest")
         near = values[..., np.rint(distinct / radius * steps).astype(np.int64)]
     else:

@@ -375,9 +375,9 @@ def evaluate(
         ls = low[begin : begin + size] if low.size > 0 else zero[:size]
         here = out[begin : begin + size]
         there = slope[begin : begin + size] if want_slope else here
-        i = 0
-        b = 0
-        o = 0
+        i = int(np.int64(0))  # a plain 0 would be a type of its own: the callees compiled once more for it
+        b = int(np.int64(0))
+        o = int(np.int64(0))
         for n in range(size):
             inside[i] = n
             beyond[b] = n

@@ -30,7 +30,7 @@ else:
     from numba.core import types
     from numba.extending import intrinsic
 
-    @intrinsic
+    @intrinsic  # type: ignore[untyped-decorator, unused-ignore]
     def fma(typingctx: Any, a: Any, b: Any, c: Any) -> Any:
         """Return a * b + c with one rounding."""
 

@@ -1,4 +1,4 @@
-"""Reading a table through its address, so that a scalar function called in a loop counts no references; bits of doubles.
+"""Reading a table through its address, so that a scalar function in a loop counts no references; bits of doubles.
 
 An array passed to a compiled function that branches costs two atomic updates of its reference count a call, six times
 the arithmetic of a panel. The caller holds the array; only `load` at indices the table's own header names is used.
@@ -34,7 +34,7 @@ else:
     from numba.core import cgutils, types
     from numba.extending import intrinsic
 
-    @intrinsic
+    @intrinsic  # type: ignore[untyped-decorator, unused-ignore]
     def address(typingctx: Any, array: Any) -> Any:
         """Return the address of a C-contiguous float64 array's first element."""
 
@@ -44,7 +44,7 @@ else:
 
         return types.intp(array), codegen
 
-    @intrinsic
+    @intrinsic  # type: ignore[untyped-decorator, unused-ignore]
     def load(typingctx: Any, where: Any, index: Any) -> Any:
         """Return the double at `where` + 8 * `index`."""
 
@@ -54,7 +54,7 @@ else:
 
         return types.float64(types.intp, types.intp), codegen
 
-    @intrinsic
+    @intrinsic  # type: ignore[untyped-decorator, unused-ignore]
     def to_bits(typingctx: Any, x: Any) -> Any:
         """Return the 64 bits of a double as an integer."""
 
@@ -63,7 +63,7 @@ else:
 
         return types.int64(types.float64), codegen
 
-    @intrinsic
+    @intrinsic  # type: ignore[untyped-decorator, unused-ignore]
     def from_bits(typingctx: Any, bits: Any) -> Any:
         """Return the double with these 64 bits."""
 

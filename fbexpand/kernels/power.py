@@ -94,7 +94,7 @@ def exp_two_part(h: float, l: float) -> float:
     t = float(EXP_TABLE[2 * j])
     v = t + (EXP_TABLE[2 * j + 1] + t * p)
     half = e >> 1
-    return v * from_bits((half + 1023) << 52) * from_bits((e - half + 1023) << 52)
+    return float(v * from_bits((half + 1023) << 52) * from_bits((e - half + 1023) << 52))
 
 
 @kernel

@@ -126,7 +126,7 @@ def fit_far(nu: float, b: FloatArray, terms: int, scale: float, pieces: FloatArr
     """Fill `pieces` (MAX_PIECES, WIDTH) for y^2 from 0 to 1 and return their number."""
     end = outer_end(nu)
     low = 0.0
-    row = 0
+    row = int(np.int64(0))
     split = False
     while row < MAX_PIECES:
         high = 0.5 * (1.0 + low) if split and row < MAX_PIECES - 1 else 1.0

@@ -14,6 +14,7 @@ from fbexpand.types import FloatArray, IntArray, Numeric
 
 MOST_EVALUATIONS = 1 << 16  # then what is left unresolved stays so, and the residual says it
 NARROWEST = 8.0  # units in the last place: a panel of this width is not divided
+DEEPEST = 1e-60  # of the radius: nor is one that lies this close to the axis
 GRADE = 0.25  # of a panel beside an end where f is not smooth: what is left to divide again
 PERSISTENT = 2  # halvings that a plateau survives in both halves: then it is noise
 UNRESOLVED = float(DEGREES)  # times the last coefficients: the error of a panel given up, a jump's height say
@@ -35,11 +36,12 @@ class Piece:
     at_high: bool  # the panel ends at a break or the rim
     graded: bool = False  # its sibling was smooth: whatever is wrong is at the end that it touches
     checked: bool = False
+    narrowest: float = 0.0  # a panel of this width is not divided
 
     @property
     def narrow(self) -> bool:
         """Whether the panel is too narrow to be divided."""
-        return self.high - self.low <= NARROWEST * float(np.spacing(self.high))
+        return self.high - self.low <= max(NARROWEST * float(np.spacing(self.high)), self.narrowest)
 
     def cut(self) -> float:
         """Return where to divide."""
@@ -63,6 +65,8 @@ def divide(
         _piece(float(edges[p]), float(edges[p + 1]), coefficients[:, p], verdict, p, streak, (True, True))
         for p in range(edges.size - 1)
     ]
+    for piece in pieces:
+        piece.narrowest = DEEPEST * float(edges[-1])
     done = [piece for piece in pieces if piece.smooth.all()]
     active = [piece for piece in pieces if not piece.smooth.all()]
     while True:
@@ -132,6 +136,7 @@ def _halves(sampler: Sampler, judge: Judge, active: list[Piece]) -> list[Piece]:
         ]  # fmt: skip
         for child in pair:
             child.smooth = child.smooth | (streak >= PERSISTENT)
+            child.narrowest = piece.narrowest
         pair[0].graded, pair[1].graded = bool(pair[1].smooth.all()), bool(pair[0].smooth.all())
         children += pair
     return children

@@ -64,7 +64,7 @@ class Judge:
     def allowed(self, height: FloatArray, level: FloatArray) -> FloatArray:
         """Return by how much a resolved polynomial may differ from the profile between its points."""
         most = np.maximum(AGREES * height, AGREES_NOISE * level)
-        return np.maximum(most, (MISSED / self.radius) * self.norm.reshape(-1, *([1] * (most.ndim - 1))))
+        return np.asarray(np.maximum(most, (MISSED / self.radius) * self.norm.reshape(-1, *([1] * (most.ndim - 1)))))
 
     def noise(self, verdict: Verdict, height: FloatArray, level: FloatArray) -> BoolArray:
         """Whether halves look like noise that their wholes had too, (size, P), given the wholes' values."""

@@ -50,7 +50,7 @@ def _error(between: str, knots: Knots, coefficients: Numeric) -> FloatArray:
     broken = _norms(values - line, knots)  # of every cell
     r, table, _ = knots.across(MIRRORED)
     if knots.r.size < KNOWN:  # curvature is not known: as much may be wrong as the table rises
-        found = np.maximum(broken, _norms(line - straight[:, :, :1] / unit, knots))
+        found = broken = np.maximum(broken, _norms(line - straight[:, :, :1] / unit, knots))
     elif r.size < FEWEST:
         found = broken
     else:

@@ -15,10 +15,12 @@ import numpy as np
 from fbexpand.profiles import chebyshev
 from fbexpand.profiles.division import divide, level_jumps
 from fbexpand.profiles.first_look import FIRST, first_look
-from fbexpand.profiles.judge import Judge
+from fbexpand.profiles.judge import EPS, Judge, Verdict
 from fbexpand.profiles.panels import Panels
 from fbexpand.profiles.sampling import Sampler
 from fbexpand.types import FloatArray, Numeric
+
+GRAIN = 16  # few different numbers of degrees, so that profiles share the weights of their integrals
 
 
 def resolve(profile: Callable[..., Any], breaks: tuple[float, ...], radius: float) -> Panels:
@@ -36,7 +38,7 @@ def resolve(profile: Callable[..., Any], breaks: tuple[float, ...], radius: floa
     if verdict.smooth.all():
         misses = np.maximum.reduceat(np.abs(on_scan - look.on_scan(coefficients)), look.ends[:-1], axis=1)
         if (misses <= judge.allowed(verdict.height, verdict.level)).all():
-            return _panels(edges, _trimmed(coefficients, verdict.residual), verdict.residual, sampler)
+            return _panels(edges, _trimmed(coefficients, verdict), verdict.residual, sampler)
     pieces = divide(sampler, judge, look, verdict, coefficients, on_scan)
     level_jumps(pieces)
     return _panels(
@@ -49,6 +51,8 @@ def resolve(profile: Callable[..., Any], breaks: tuple[float, ...], radius: floa
 
 def _panels(edges: FloatArray, coefficients: Numeric, residual: FloatArray, sampler: Sampler) -> Panels:
     shape = sampler.batch_shape
+    if sampler.unit is not None:
+        coefficients, residual = coefficients * sampler.unit[:, :, None], residual * sampler.unit
     return Panels(
         edges,
         coefficients.reshape(*shape, *coefficients.shape[1:]),
@@ -57,8 +61,9 @@ def _panels(edges: FloatArray, coefficients: Numeric, residual: FloatArray, samp
     )
 
 
-def _trimmed(coefficients: Numeric, residual: FloatArray) -> Numeric:
-    """Leave out degrees, eight at a time, that no profile needs: all below its residual / 16."""
-    needed = (np.abs(coefficients) > (residual / 16.0)[..., None]).any(axis=(0, 1))
+def _trimmed(coefficients: Numeric, verdict: Verdict) -> Numeric:
+    """Leave out degrees that no profile needs, GRAIN at a time: those lost in the rounding of the others."""
+    least = np.maximum(verdict.residual / 16.0, EPS * verdict.height)
+    needed = (np.abs(coefficients) > least[..., None]).any(axis=(0, 1))
     last = int(np.flatnonzero(needed)[-1]) if needed.any() else 0
-    return np.ascontiguousarray(coefficients[..., : 8 * (last // 8 + 1)])
+    return np.ascontiguousarray(coefficients[..., : GRAIN * (last // GRAIN + 1)])

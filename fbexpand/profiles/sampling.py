@@ -12,16 +12,22 @@ from fbexpand import checks
 from fbexpand.exceptions import ArgumentValueError
 from fbexpand.types import FloatArray, Numeric
 
+TINY, HUGE = 1e-100, 1e100  # profiles between these are taken as they are
 PROBES = 33  # single radii on which a profile that failed on an array is tried
 
 
 class Sampler:
-    """A profile with its batch shape, found at the first call, and a count of the radii asked for."""
+    """A profile with its batch shape, found at the first call, and a count of the radii asked for.
+
+    Values near the ends of the range of doubles come divided by a power of two, `unit`, so that slopes and
+    squares of them are ordinary numbers.
+    """
 
     def __init__(self, profile: Callable[[FloatArray], Any]) -> None:
         self._profile = profile
         self.batch_shape: tuple[int, ...] = ()
         self.evaluations = 0
+        self.unit: FloatArray | None = None
         self._called = False
 
     def __call__(self, r: FloatArray) -> Numeric:
@@ -45,6 +51,7 @@ class Sampler:
             raise self._wrong_shape(values.shape, r.size)
         if values.size == 0:
             raise self._wrong_shape(values.shape, r.size)
+        first = not self._called
         self._called = True
         self.batch_shape = shape
         self.evaluations += r.size
@@ -53,7 +60,9 @@ class Sampler:
             values = np.broadcast_to(values, (values.shape[0], r.size))
         if not np.isfinite(values).all():
             self._refuse(values, r)
-        return values
+        if first:
+            self.unit = _unit(values)
+        return values if self.unit is None else values / self.unit
 
     def _as_numbers(self, found: Any) -> Numeric:
         if type(found) is np.ndarray and found.dtype == np.float64:
@@ -80,6 +89,16 @@ class Sampler:
             "profile",
             self._profile,
         )
+
+
+def _unit(values: Numeric) -> FloatArray | None:
+    """Return a power of two for every profile (size, 1); None where all are of ordinary size."""
+    size = np.abs(values).max(axis=1, keepdims=True)
+    ordinary = (size == 0.0) | ((size > TINY) & (size < HUGE))
+    if ordinary.all():
+        return None
+    size = np.maximum(np.abs(values.real), np.abs(values.imag)).max(axis=1, keepdims=True)  # no overflow
+    return np.asarray(np.ldexp(1.0, np.where(ordinary, 0, np.frexp(size)[1] - 1)))
 
 
 def _one_at_a_time(profile: Callable[..., Any], r: FloatArray, error: Exception) -> bool:
