@@ -10,6 +10,7 @@ from fbexpand.analysis.expand import expand
 from fbexpand.bases import Basis, Dini, FourierBessel
 from fbexpand.profiles.table import RadialTable
 from fbexpand.special.bessel import bessel_j
+from fbexpand.special.roots import bessel_zeros, dini_roots
 
 
 def warm_up() -> None:
@@ -33,9 +34,12 @@ def warm_up() -> None:
         series.error_estimate()
         series.terms_for(0.5)
     basis = Dini(robin=2.0)
-    expand(RadialTable(r, _profile(r)), basis, tol=1e-3).laplacian()
+    expand(RadialTable(r, _profile(r)), basis, tol=1e-3)
     expand(lambda r: np.stack((r, 1j * r * r)), basis, terms=4)(points)
     for order in (0.0, 0.3, 7.5, 60.0, 500.0):
+        bessel_zeros(order, 400)
+        bessel_zeros(order, 2, start=10**9)
+        dini_roots(order, 1.0, 2, start=10**9)
         bessel_j(order, np.concatenate((np.geomspace(1e-3, 1e6, 60), order + points)))
 
 

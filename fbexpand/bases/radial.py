@@ -111,6 +111,8 @@ class RadialBasis:
         out = np.empty(radii.size * count)
         scale = np.ones(count) if n == 0 else (high / self.radius) ** n
         skip = int(start == 1 and spectrum.kind == RATIO)
+        if skip:
+            scale[0] = 1.0  # its column is replaced below; at root 0 it would be 0 times infinity
         if start == 1 and spectrum.kind == SCALED_J:
             scale[0] /= rim.value[0]
         if skip < count:

@@ -71,12 +71,13 @@ def integrate(rows: Rows, mode: Mode, breaks: FloatArray, radius: float) -> Inte
     """Return the integrals of every row against the mode."""
     cuts = np.concatenate((mode.cuts, breaks))
     edges = np.unique(np.concatenate(([0.0], cuts[(cuts > 0.0) & (cuts < radius)], [radius])))
-    size, spread = _weigh(rows, mode, edges)
+    pieces, spread = _weigh(rows, mode, edges)
+    size = pieces.sum(axis=1)
     total = np.zeros(rows.count)
     error = np.zeros(rows.count)
     norm = norm_error = 0.0
     share = (1e-16 * size).tolist()
-    for low, high in zip(edges[:-1].tolist(), edges[1:].tolist(), strict=True):
+    for i, (low, high) in enumerate(zip(edges[:-1].tolist(), edges[1:].tolist(), strict=True)):
         seen: dict[float, list[float]] = {}
 
         def term(r: float, row: int, seen: dict[float, list[float]] = seen) -> float:
@@ -91,7 +92,7 @@ def integrate(rows: Rows, mode: Mode, breaks: FloatArray, radius: float) -> Inte
                 term, low, high, args=(row,), epsabs=share[row], epsrel=RELATIVE, limit=LIMIT, full_output=1
             )
             total[row] += found[0]
-            error[row] += found[1]
+            error[row] += _claimed(found[1], float(pieces[row, i]))
         if mode.norm is None:
             found = quad(
                 lambda r: mode.value(r) ** 2 * r, low, high, epsabs=0.0, epsrel=RELATIVE, limit=LIMIT, full_output=1
@@ -106,6 +107,14 @@ def integrate(rows: Rows, mode: Mode, breaks: FloatArray, radius: float) -> Inte
     )
 
 
+def _claimed(error: float, size: float) -> float:
+    """Return quad's error; where it is the least that quad ever claims, what rounding can do to a sum of 21 values.
+
+    That least is 50 eps integral |f phi| r dr (QUADPACK's qk21), ten times what is seen.
+    """
+    return 4.0 * EPS * size if error <= 51.0 * EPS * size else error
+
+
 def _nodes(edges: FloatArray) -> tuple[FloatArray, FloatArray]:
     """Return Gauss nodes and weights between all edges, (P, GAUSS) each."""
     x, w = np.polynomial.legendre.leggauss(GAUSS)
@@ -114,7 +123,7 @@ def _nodes(edges: FloatArray) -> tuple[FloatArray, FloatArray]:
 
 
 def _weigh(rows: Rows, mode: Mode, edges: FloatArray) -> tuple[FloatArray, FloatArray]:
-    """Return integral |f phi| r dr of each row, roughly, and what errors of phi and of rounded radii make of it."""
+    """Return integral |f phi| r dr of each row between all edges, roughly; and what errors of phi and of radii add."""
     r, w = _nodes(edges)
     flat = r.ravel()
     phi = mode.values(flat)
@@ -122,7 +131,7 @@ def _weigh(rows: Rows, mode: Mode, edges: FloatArray) -> tuple[FloatArray, Float
     weight = w * r
     spread = mode.spread(flat, phi).reshape(r.shape)
     phi = np.abs(phi).reshape(r.shape)
-    size = np.einsum("spi,pi->s", np.abs(f), phi * weight)
+    size = np.einsum("spi,pi->sp", np.abs(f), phi * weight)
     steep = np.abs(np.gradient(f, axis=2)) / np.maximum(np.gradient(r, axis=1), 1e-300) * r
     rounding = EPS * np.einsum("spi,pi->s", np.abs(f) + steep, phi * weight)
     return size, np.einsum("spi,pi->s", np.abs(f), spread * weight) + rounding

@@ -116,7 +116,7 @@ class ScipyRoots:
             x = solve(
                 lambda mu: mu * ratio_i(order, mu) + shift, max(near, -shift) * (1.0 - 1e-12), high * (1.0 + 1e-12)
             )
-            return x, 0.0, 64.0 * EPS * x
+            return x, 0.0, (64.0 + 4.0 * order) * EPS * x  # hyp0f1 loses an eps or so per unit of order
         j1 = float(self.zeros(1)[0])
 
         def residual(x: float) -> float:
@@ -128,7 +128,7 @@ class ScipyRoots:
         high = min(near, j1)
         x = solve(residual, max(low * (1.0 - 1e-12), TINY), high * (1.0 + 1e-12))
         # conditioning: d ln x / d ln shift is below 1/2, J beside its turning point at large order
-        return x, 0.0, (64.0 * EPS + float(jv_error(order, np.array(x)))) * x
+        return x, 0.0, ((64.0 + 4.0 * order) * EPS + float(jv_error(order, np.array(x)))) * x
 
 
 def ratio_i(order: float, mu: float) -> float:

@@ -1,0 +1,1 @@
+"""The main job from the command line."""
