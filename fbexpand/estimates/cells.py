@@ -68,14 +68,15 @@ def half_wave(basis: Basis, terms: int) -> float:
     return float(basis.radius) * (math.pi / root if root > math.pi else 1.0)
 
 
-def layer_edges(basis: Basis) -> FloatArray:
-    """Return edges that resolve the boundary layer of a growing mode at the rim."""
+def layer_edges(basis: Basis, end: float | None = None) -> FloatArray:
+    """Return edges in (0, end) that resolve the steep rise of a growing mode toward `end`, by default the rim."""
     if not basis.growing:
         return np.empty(0)
+    end = float(basis.radius) if end is None else end
     depth = basis.radius / max(float(basis.roots(1)[0]), 1.0)
-    steps = int(math.log2(basis.radius / depth)) if depth < basis.radius else 0
-    edges = basis.radius - depth * 2.0 ** np.arange(-1, steps)
-    return np.asarray(edges[(edges > 0.0) & (edges < basis.radius)])
+    steps = int(math.log2(end / depth)) if depth < end else 0
+    edges = end - depth * 2.0 ** np.arange(-1, steps)
+    return np.asarray(edges[(edges > 0.0) & (edges < end)])
 
 
 def fine_widths(panels: Panels) -> FloatArray:

@@ -128,16 +128,17 @@ def _rule(basis: Basis, terms: int, a: float, b: float) -> tuple[FloatArray, Flo
     """
     order = float(basis.order)
     width = min(HALF_WAVES * half_wave(basis, terms), float(basis.radius))
+    layer = layer_edges(basis, b)
     start, rules = a, []
     if a == 0.0:
-        start = min(width, b)
+        start = min(width, b, *layer)
         rules.append(_axis_rule(order, start))
     grading = [start]
     while start > 0.0 and grading[-1] < min(b, width):
         grading.append(min(2.0 * grading[-1], b))
     start = grading[-1]
     steps = np.linspace(start, b, max(1, math.ceil((b - start) / width)) + 1) if start < b else np.array([b])
-    cuts = np.union1d(np.concatenate((grading, steps)), [c for c in layer_edges(basis) if grading[0] < c < b])
+    cuts = np.union1d(np.concatenate((grading, steps)), layer[layer > grading[0]])
     x, w = np.polynomial.legendre.leggauss(NODES)
     half = 0.5 * np.diff(cuts)[:, None]
     r = cuts[:-1, None] + half * (x + 1.0)
