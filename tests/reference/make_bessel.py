@@ -71,11 +71,14 @@ def orders(rng: np.random.Generator, band: tuple[float, float], count: int) -> n
 
 
 def arguments(rng: np.random.Generator, region: str, order: np.ndarray) -> np.ndarray:
-    """Return one x for each order, in a region of the (order, x) plane."""
+    """Return one x for each order, in a region of the (order, x) plane.
+
+    By operations that every machine rounds alike, so that the file can be made again anywhere.
+    """
     size = order.size
     scale = np.maximum(order, 1.0)
     if region == "tiny":
-        return scale * 10.0 ** rng.uniform(-12.0, -2.0, size)
+        return scale * _spread(rng, -40, -7, size)
     if region == "below":
         return scale * rng.uniform(0.01, 0.9, size)
     if region == "near below":
@@ -85,10 +88,16 @@ def arguments(rng: np.random.Generator, region: str, order: np.ndarray) -> np.nd
     if region == "middle":
         return scale * rng.uniform(1.1, 10.0, size)
     if region == "far":
-        return 10.0 ** rng.uniform(np.log10(10.0 * scale), 6.0)
+        share = rng.uniform(0.0, 1.0, size)
+        return 10.0 * scale + (1e6 - 10.0 * scale) * (share * share * share * share)
     if region == "huge":
-        return 10.0 ** rng.uniform(6.0, 15.0, size)
+        return _spread(rng, 20, 50, size)
     raise ValueError(region)
+
+
+def _spread(rng: np.random.Generator, low: int, high: int, size: int) -> np.ndarray:
+    """Return numbers from 2^low to 2^high, about as many in every octave."""
+    return np.ldexp(rng.uniform(1.0, 2.0, size), rng.integers(low, high, size))
 
 
 def corners() -> list[tuple[float, float]]:
