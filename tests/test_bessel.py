@@ -8,6 +8,7 @@ import numpy as np
 import pytest
 
 from fbexpand import bessel_j, compiled_bessel_j
+from fbexpand.kernels.bessel_table import PANELS, WIDTH, X0, X_PHASE
 from fbexpand.special import bessel
 
 EPS = 2.0**-52
@@ -37,12 +38,39 @@ def test_bits_do_not_depend_on_neighbours_or_length(order):
 
 def test_a_few_points_at_a_new_order_build_no_table_and_agree_with_it():
     rng = np.random.default_rng(2)
-    for order in rng.uniform(0, 13.99, 12):
-        x = points(order, 3)
-        few = [bessel_j(float(order), float(v)) for v in x]
-        assert (float(order), 0.0) not in bessel._tables
-        np.testing.assert_array_equal(bessel_j(float(order), x), few)
-        assert (float(order), 0.0) in bessel._tables
+    draws = [*rng.uniform(0, 14, 6), *rng.uniform(14, 100, 6), *rng.uniform(100, 1e4, 6), 20.0, 999.5, 1e4]
+    for order in map(float, draws):
+        x = points(order, 3)[::2]
+        few = [bessel_j(order, float(v)) for v in x[:40]]
+        assert (order, 0.0) not in bessel._tables
+        few += [bessel_j(order, float(v)) for v in x[40:]]
+        slopes = [float(bessel_j(order + 0.0, x[i : i + 1], derivative=1)[0]) for i in range(20)]
+        whole, both = bessel_j(order, x), bessel_j(order, x, derivative=1)
+        assert (order, 0.0) in bessel._tables
+        np.testing.assert_array_equal(whole, few)
+        np.testing.assert_array_equal(both[:20], slopes)
+
+
+def test_an_order_asked_for_again_and_again_gets_its_table():
+    for v in np.linspace(1.0, 60.0, bessel._PAYS + 1):
+        bessel_j(31.17, float(v))
+    assert (31.17, 0.0) in bessel._tables
+
+
+@pytest.mark.parametrize("order", [14.0, 40.3, 99.9, 150.25, 1234.5, 9999.9])
+def test_parts_of_a_table_agree_where_they_meet(order):
+    """Neighbouring panels come from expansions at different places: two roads to the values between them."""
+    table = bessel.table_of(order)
+    start, width, panels, end = (table[i] for i in (X0, WIDTH, PANELS, X_PHASE))
+    seams = start + width * np.arange(1, panels)
+    low, high = bessel_j(order, np.nextafter(seams, 0.0)), bessel_j(order, seams)
+    slopes = bessel_j(order, seams, derivative=1)
+    modulus = np.where(seams < order, np.abs(high), np.sqrt(2 / np.pi / end))
+    gap = np.abs(high - low - slopes * np.spacing(np.nextafter(seams, 0.0)))
+    assert np.max(gap / np.maximum(modulus, 1e-290)) <= 4 * EPS
+    before = np.nextafter(end, 0.0)
+    at_end, slope = bessel_j(order, np.array([before, end])), bessel_j(order, np.array([end]), derivative=1)
+    assert abs(at_end[1] - at_end[0] - slope[0] * (end - before)) <= 4 * EPS * np.sqrt(2 / np.pi / end)
 
 
 def test_the_cache_is_bounded():

@@ -1,7 +1,7 @@
 """J_nu and J_nu' in double-double by the three expansions the tables are built from.
 
-Ascending series (DLMF 10.2.2), the continued fraction of J_nu'/J_nu (DLMF 10.10.1), the expansion of the modulus
-(DLMF 10.18.17) with the phase integrated from it (DLMF 10.18.8), and Taylor steps of Bessel's equation.
+Ascending series (DLMF 10.2.2), the expansion of the modulus (DLMF 10.18.17) with the phase integrated from it
+(DLMF 10.18.8), and Taylor steps of Bessel's equation.
 """
 
 from __future__ import annotations
@@ -17,8 +17,8 @@ from fbexpand.kernels.jit import kernel
 from fbexpand.types import FloatArray
 
 TAYLOR_TERMS = 26
-_EXACT_TERMS = 12  # of these the first carry two parts; the rest are below 1e-12 of the sum
-_INVERSE_PRODUCT = np.array([split(Fraction(1, (k + 1) * (k + 2))) for k in range(TAYLOR_TERMS)])
+EXACT_TERMS = 12  # of these the first carry two parts; the rest are below 1e-12 of the sum
+_INVERSE_PRODUCT = np.array([split(Fraction(1, (k + 1) * (k + 2))) for k in range(64)])
 
 
 @kernel
@@ -48,25 +48,6 @@ def ascending_pair(nh: float, nl: float, x: float, gh: float, gl: float) -> tupl
     jh, jl = dd_mul(sh, sl, eh, el)
     dh, dl = dd_mul(wh, wl, eh, el)
     return jh, jl, dh, dl, e
-
-
-@kernel
-def log_derivative(nh: float, nl: float, x: float) -> tuple[float, float]:
-    """Return J'/J for 0 < x < nu from the continued fraction, taken backward from where it has converged."""
-    n = 60
-    while n < 400000:
-        ratio = (nh + n) / x
-        if ratio > 1.0 and math.acosh(ratio) * n > 60.0:
-            break
-        n = int(n * 1.5)
-    fh, fl = 0.0, 0.0
-    for k in range(n, 0, -1):
-        ah, al = dd_add_d(nh, nl, float(k))
-        ah, al = dd_div(2.0 * ah, 2.0 * al, x, 0.0)
-        ah, al = dd_add(ah, al, -fh, -fl)
-        fh, fl = dd_div(1.0, 0.0, ah, al)
-    qh, ql = dd_div(nh, nl, x, 0.0)
-    return dd_add(qh, ql, -fh, -fl)
 
 
 @kernel
@@ -164,8 +145,10 @@ def series_pair(
 
 
 @kernel
-def taylor(nh: float, nl: float, c: float, jh: float, jl: float, dh: float, dl: float, t: FloatArray) -> None:
-    """Fill `t` (TAYLOR_TERMS, 2) with the Taylor coefficients at c of the solution with these values there.
+def taylor(
+    nh: float, nl: float, c: float, jh: float, jl: float, dh: float, dl: float, t: FloatArray, exact: int
+) -> None:
+    """Fill `t` (terms, 2) with the Taylor coefficients at c of the solution with these values there.
 
     c^2 (k+2)(k+1) t_{k+2} + c (k+1)(2k+1) t_{k+1} + (k^2 + c^2 - nu^2) t_k + 2 c t_{k-1} + t_{k-2} = 0.
     """
@@ -179,7 +162,7 @@ def taylor(nh: float, nl: float, c: float, jh: float, jl: float, dh: float, dl: 
     t[0, 1] = jl
     t[1, 0] = dh
     t[1, 1] = dl
-    for k in range(_EXACT_TERMS):
+    for k in range(exact):
         sh, sl = dd_mul_d(ih, il, (k + 1.0) * (2.0 * k + 1.0))
         sh, sl = dd_mul(sh, sl, t[k + 1, 0], t[k + 1, 1])
         ah, al = dd_mul_d(sqh, sql, float(k * k))
@@ -195,7 +178,7 @@ def taylor(nh: float, nl: float, c: float, jh: float, jl: float, dh: float, dl: 
         sh, sl = dd_mul(sh, sl, _INVERSE_PRODUCT[k, 0], _INVERSE_PRODUCT[k, 1])
         t[k + 2, 0] = -sh
         t[k + 2, 1] = -sl
-    for k in range(_EXACT_TERMS, TAYLOR_TERMS - 2):
+    for k in range(exact, t.shape[0] - 2):
         s = ih * ((k + 1.0) * (2.0 * k + 1.0)) * t[k + 1, 0] + (k * k * sqh + qh) * t[k, 0]
         s += 2.0 * ih * t[k - 1, 0] + sqh * t[k - 2, 0]
         t[k + 2, 0] = -s * _INVERSE_PRODUCT[k, 0]
@@ -203,16 +186,16 @@ def taylor(nh: float, nl: float, c: float, jh: float, jl: float, dh: float, dl: 
 
 
 @kernel
-def taylor_step(t: FloatArray, h: float) -> tuple[float, float, float, float]:
-    """Return the value and derivative of the Taylor polynomial `t` at distance h (a power of two or short)."""
+def taylor_step(t: FloatArray, h: float, exact: int) -> tuple[float, float, float, float]:
+    """Return the value and derivative of the Taylor polynomial `t` at distance h."""
     s = 0.0
     u = 0.0
-    for k in range(TAYLOR_TERMS - 1, _EXACT_TERMS + 1, -1):
+    for k in range(t.shape[0] - 1, exact + 1, -1):
         u = u * h + k * t[k, 0]
         s = s * h + t[k, 0]
     sh, sl = s, 0.0
     uh, ul = u, 0.0
-    for k in range(_EXACT_TERMS + 1, -1, -1):
+    for k in range(exact + 1, -1, -1):
         if k >= 1:
             uh, ul = dd_mul_d(uh, ul, h)
             ph, pl = dd_mul_d(t[k, 0], t[k, 1], float(k))

@@ -1,6 +1,8 @@
 """Modulus and phase beyond the panels of a table: theta = x - c + delta(y), M = sqrt(2/(pi x)) g(y), y = X/x.
 
-From the series of `modulus_series`: `a` for (pi x/2) M^2 = g^2, and `d` for delta = sum d_k y^(2k-1).
+m = g^2 = (pi x/2) M^2 and theta' = 1/m. Below order 14 both are polynomials in y^2. From there on they come in panels
+uniform in y, each from the order and its place alone: the constants by Debye's expansions, the rest by the series
+m = sum a_k y^2k (DLMF 10.18.17) about the panel's centre and delta' = (X/y^2) (1 - 1/m).
 """
 
 from __future__ import annotations
@@ -10,12 +12,15 @@ import math
 import numpy as np
 
 from fbexpand.kernels.bessel_direct import phase_constant
-from fbexpand.kernels.dd import dd_add, dd_add_d, dd_mul, dd_mul_d, dd_sqrt, two_prod
+from fbexpand.kernels.bessel_station import debye_phase, debye_sums_above, root_of
+from fbexpand.kernels.dd import dd_add, dd_add_d, dd_div, dd_mul, two_prod
 from fbexpand.kernels.elementary import PI1, PI2
 from fbexpand.kernels.jit import kernel
 from fbexpand.types import FloatArray
 
-_PHASE_TERMS = 20  # as in the table's layout
+MODULUS_TERMS = 128
+_REACH = 28  # terms of delta's own series, which serves in the outer half, y < 1/2
+_DEGREE = 9  # of a panel, plus one
 _SMOOTH_TERMS = 9
 
 
@@ -46,58 +51,108 @@ def smooth_phase(nh: float, nl: float, a: FloatArray, d: FloatArray, terms: int,
 
 
 @kernel
-def phase_panels(nh: float, nl: float, a: FloatArray, d: FloatArray, terms: int, panels: int, out: FloatArray) -> None:
-    """Fill the panels of delta = sum d_k y^(2k-1) - c and g = sqrt(sum a_k y^2k)."""
-    ch, cl = phase_constant(nh, nl)
-    m = np.zeros(9)
-    powers = np.zeros(2 * terms + 1)
-    for i in range(panels):
-        y = (i + 0.5) / panels
-        o = i * _PHASE_TERMS
-        zh, zl = two_prod(y, y)
-        ah, al = d[terms - 1, 0], d[terms - 1, 1]  # sum d_k z^(k-1)
-        bh, bl = 0.0, 0.0  # its derivative
-        sh, sl = a[terms - 1, 0], a[terms - 1, 1]
-        for k in range(terms - 2, 0, -1):
-            bh, bl = dd_mul(bh, bl, zh, zl)
-            bh, bl = dd_add(bh, bl, ah, al)
-            ah, al = dd_mul(ah, al, zh, zl)
-            ah, al = dd_add(ah, al, d[k, 0], d[k, 1])
-            sh, sl = dd_mul(sh, sl, zh, zl)
-            sh, sl = dd_add(sh, sl, a[k, 0], a[k, 1])
-        sh, sl = dd_mul(sh, sl, zh, zl)
-        sh, sl = dd_add_d(sh, sl, 1.0)
-        vh, vl = dd_mul_d(ah, al, y)
-        wh, wl = dd_mul(bh, bl, zh, zl)
-        wh, wl = dd_add(ah, al, 2.0 * wh, 2.0 * wl)
-        vh, vl = dd_add(vh, vl, -ch, -cl)
-        vh, vl = within_turn(vh, vl)
-        out[o] = vh
-        out[o + 1] = vl
-        out[o + 2] = wh
-        out[o + 3] = wl
-        powers[0] = 1.0
-        for k in range(1, 2 * terms + 1):
-            powers[k] = powers[k - 1] * y
-        for j in range(9):
-            s = 0.0
-            u = 0.0
-            for k in range(terms - 1, 0, -1):
-                if 2 * k < j:
-                    break
-                binomial = 1.0
-                for q in range(j):
-                    binomial *= (2 * k - q) / (q + 1.0)
-                u += a[k, 0] * binomial * powers[2 * k - j]
-                if 2 * k - 1 >= j:
-                    s += d[k, 0] * binomial * (2 * k - j) / (2.0 * k) * powers[2 * k - 1 - j]
-            m[j] = u
-            if j >= 2:
-                out[o + 2 + j] = s
-        gh, _ = dd_sqrt(sh, sl)
-        out[o + 11] = gh
-        for j in range(1, 9):
-            s = m[j]
-            for q in range(1, j):
-                s -= out[o + 11 + q] * out[o + 11 + j - q]
-            out[o + 11 + j] = s / (2.0 * gh)
+def plain_series(nu: float, scale: float, series: FloatArray) -> None:
+    """Fill rows 0 and 1 of `series` (2, MODULUS_TERMS) with a_k of m, and d_k+1 of delta = y sum d_k+1 y^2k."""
+    a, d = series[0], series[1]
+    a[:] = 0.0
+    a[0] = 1.0
+    for k in range(1, MODULUS_TERMS):
+        half = k - 0.5
+        f = (nu - half) / scale * ((nu + half) / scale) * (half / k)
+        if abs(f) >= 1.0 and k > nu + 1.0:
+            break  # here the terms begin to grow
+        a[k] = a[k - 1] * f
+    d[0] = 1.0
+    for k in range(1, _REACH):  # the series of 1/m
+        s = a[k]
+        for j in range(1, k):
+            s += a[j] * d[k - j]
+        d[k] = -s
+    for k in range(1, _REACH):
+        d[k - 1] = -scale * d[k] / (2.0 * k - 1.0)
+    d[_REACH - 1 :] = 0.0
+
+
+@kernel
+def _about(coefficients: FloatArray, y: float, out: FloatArray) -> None:
+    """Fill `out` with the Taylor coefficients in t of sum c_k (y + t)^2k."""
+    z = y * y
+    local = np.zeros(_DEGREE)
+    last = coefficients.size - 1
+    while last > 1 and abs(coefficients[last]) * z**last < 1e-30:
+        last -= 1
+    for k in range(last, -1, -1):  # in powers of z - z0
+        for j in range(_DEGREE - 1, 0, -1):
+            local[j] = local[j] * z + local[j - 1]
+        local[0] = local[0] * z + coefficients[k]
+    out[:] = 0.0
+    for k in range(_DEGREE - 1, -1, -1):  # z - z0 = 2 y t + t^2
+        for j in range(_DEGREE - 1, 1, -1):
+            out[j] = 2.0 * y * out[j - 1] + out[j - 2]
+        out[1] = 2.0 * y * out[0]
+        out[0] = local[k]
+
+
+@kernel
+def phase_panel(nh: float, nl: float, scale: float, y: float, series: FloatArray, out: FloatArray) -> None:
+    """Fill a panel about y: delta - c (2), its linear term (2), delta_2..8 and g_0..8."""
+    xh, xl = dd_div(scale, 0.0, y, 0.0)
+    wh, wl = root_of(nh, nl, xh, xl)
+    ah, al, bh, bl, _, _, _, _ = debye_sums_above(nh, nl, wh, wl)
+    # m - 1 = (x - w)/w + (x/w) s, s = A^2 + B^2 - 1
+    sh, sl = dd_add_d(ah, al, 2.0)
+    sh, sl = dd_mul(sh, sl, ah, al)
+    ph, pl = dd_mul(bh, bl, bh, bl)
+    sh, sl = dd_add(sh, sl, ph, pl)
+    ph, pl = dd_mul(nh, nl, nh, nl)
+    qh, ql = dd_add(xh, xl, wh, wl)
+    ph, pl = dd_div(ph, pl, qh, ql)
+    qh, ql = dd_mul(xh, xl, sh, sl)
+    qh, ql = dd_add(qh, ql, ph, pl)
+    qh, ql = dd_div(qh, ql, wh, wl)
+    mh, ml = dd_add_d(qh, ql, 1.0)
+    qh, ql = dd_div(qh, ql, mh, ml)  # 1 - 1/m
+    outer = y < 0.5
+    # w - x - nu acos(nu/x) - pi/4 - atan(B/A)
+    ch, cl = debye_phase(nh, nl, xh, xl, wh, wl)
+    ph, pl = dd_add(-ph, -pl, -ch, -cl)
+    ah, al = dd_add_d(ah, al, 1.0)
+    ah, al = dd_div(bh, bl, ah, al)
+    r = ah * ah
+    r = ah * r * (1.0 / 3.0 - r * (1.0 / 5.0 - r * (1.0 / 7.0 - r / 9.0)))
+    ah, al = dd_add_d(ah, al, -r)
+    ph, pl = dd_add(ph, pl, -ah, -al)
+    out[0], out[1] = within_turn(ph, pl)
+    ph, pl = dd_mul(qh, ql, xh, xl)
+    out[2], out[3] = dd_div(ph, pl, y, 0.0)
+    # the rest
+    m = np.empty(_DEGREE)
+    _about(series[0], y, m)
+    m[0] = mh
+    g = out[11:20]
+    g[0] = math.sqrt(mh)
+    for j in range(1, _DEGREE):
+        s = m[j]
+        for i in range(1, j):
+            s -= g[i] * g[j - i]
+        g[j] = s / (2.0 * g[0])
+    if outer:
+        d = np.empty(_DEGREE)
+        _about(series[1], y, d)
+        for j in range(2, _DEGREE):
+            out[2 + j] = y * d[j] + d[j - 1]
+        return
+    e = np.empty(_DEGREE)  # 1 - 1/m
+    e[0] = qh
+    for j in range(1, _DEGREE):
+        s = m[j] * (1.0 - e[0])
+        for i in range(1, j):
+            s -= m[i] * e[j - i]
+        e[j] = s / mh
+    for j in range(1, _DEGREE - 1):  # times X/y^2, integrated
+        s = 0.0
+        power = scale / (y * y)
+        for i in range(j + 1):
+            s += e[j - i] * power * (i + 1.0)
+            power /= -y
+        out[3 + j] = s / (j + 1.0)

@@ -23,11 +23,11 @@ DEBYE_TERMS = 30
 DEBYE_FROM = 25.0  # w from which the terms fall below an eps before they grow
 
 
-def _polynomials() -> tuple[list[list[Fraction]], list[list[Fraction]]]:
+def debye_polynomials(terms: int) -> tuple[list[list[Fraction]], list[list[Fraction]]]:
     """Return the coefficients in q, ascending, of u_0 ... and d_0 = 0, d_1 ... (from DLMF 10.41.9)."""
     u = [[Fraction(1)]]
     d = [[Fraction(0)]]
-    for k in range(DEBYE_TERMS - 1):
+    for k in range(terms - 1):
         old = u[-1]
         d.append([(k + Fraction(1, 2) + 2 * j) * a for j, a in enumerate(old)])
         new = [Fraction(0)] * (k + 2)
@@ -46,7 +46,7 @@ def _table(rows: list[list[Fraction]]) -> np.ndarray:
     return table
 
 
-_U, _D = (_table(rows) for rows in _polynomials())
+_U, _D = (_table(rows) for rows in debye_polynomials(DEBYE_TERMS))
 
 
 @kernel

@@ -10,7 +10,8 @@ import numpy as np
 
 from fbexpand import checks
 from fbexpand.kernels.bessel_eval import j_pairs, j_values
-from fbexpand.kernels.bessel_table import PANEL_START, SMOOTH_ORDER, build, fill, layout
+from fbexpand.kernels.bessel_few import few_pairs
+from fbexpand.kernels.bessel_table import PANEL_START, fill, layout
 from fbexpand.types import FloatArray
 
 MAX_ORDER = 1e6
@@ -18,10 +19,11 @@ MAX_DERIVATIVE = 4
 _KEPT_BYTES = 64 * 2**20
 
 _tables: OrderedDict[tuple[float, float], FloatArray] = OrderedDict()
-_begun: OrderedDict[tuple[float, float], FloatArray] = OrderedDict()  # filled in part, for a few points
+_asked: OrderedDict[tuple[float, float], int] = OrderedDict()  # points, while there is no table
 _lock = threading.Lock()
 _FEW = 8
-_KEPT_BEGUN = 64
+_PAYS = 100
+_KEPT_ORDERS = 1024
 _NO_LOW = np.zeros(0)
 
 
@@ -33,17 +35,11 @@ def table_of(order: float, order_low: float = 0.0) -> FloatArray:
         if data is not None:
             _tables.move_to_end(key)
             return data
-        begun = _begun.get(key)
-    if begun is None:
-        begun = _blank(order, order_low)
-    if order < SMOOTH_ORDER:
-        with _lock:  # a table that was begun for a few points is finished by one thread
-            fill(begun, _NO_LOW)
-    else:
-        build(begun)
+    made = _blank(order, order_low)
+    fill(made)
     with _lock:
-        data = _tables.setdefault(key, begun)
-        _begun.pop(key, None)
+        data = _tables.setdefault(key, made)
+        _asked.pop(key, None)
         total = sum(table.nbytes for table in _tables.values())
         while total > _KEPT_BYTES and len(_tables) > 1:
             total -= _tables.popitem(last=False)[1].nbytes
@@ -51,29 +47,25 @@ def table_of(order: float, order_low: float = 0.0) -> FloatArray:
 
 
 def _blank(order: float, order_low: float) -> FloatArray:
-    head = np.zeros(PANEL_START)
-    size = layout(order, order_low, head)
-    data = np.full(size, np.nan) if order < SMOOTH_ORDER else np.zeros(size)
+    head = np.empty(PANEL_START)
+    data = np.zeros(layout(order, order_low, head))
     data[:PANEL_START] = head
     return data
 
 
-def _few(order: float, order_low: float, x: FloatArray, low: FloatArray, out: FloatArray) -> bool:
-    """Evaluate a few points of a low order from only the panels they need; say whether that was done."""
-    if x.size > _FEW or not order < SMOOTH_ORDER:
+def _too_few(order: float, order_low: float, size: int) -> bool:
+    """Say whether so few points of the order have been asked for that a table does not pay."""
+    if size > _FEW:
         return False
     key = (order, order_low)
     with _lock:
         if key in _tables:
             return False
-        data = _begun.get(key)
-        if data is None:
-            data = _begun[key] = _blank(order, order_low)
-            if len(_begun) > _KEPT_BEGUN:
-                _begun.popitem(last=False)
-        fill(data, x)
-        j_values(data, x, low, out)
-    return True
+        asked = _asked.pop(key, 0) + size
+        _asked[key] = asked
+        if len(_asked) > _KEPT_ORDERS:
+            _asked.popitem(last=False)
+    return asked <= _PAYS
 
 
 def _plain(x: Any) -> FloatArray:
@@ -92,7 +84,10 @@ def bessel_pair_at(
     """Return J and J' of order + order_low at x + x_low, x >= 0; nothing is checked."""
     flat, low = _flat(x, x_low)
     value, slope = np.empty_like(flat), np.empty_like(flat)
-    j_pairs(table_of(order, order_low), flat, low, value, slope)
+    if _too_few(order, order_low, flat.size):
+        few_pairs(order, order_low, flat, low, value, slope, True)
+    else:
+        j_pairs(table_of(order, order_low), flat, low, value, slope)
     shape = np.shape(x)
     return value.reshape(shape), slope.reshape(shape)
 
@@ -110,8 +105,8 @@ def bessel_at(
         return bessel_pair_at(order, x, x_low, order_low=order_low)[1]
     flat, low = _flat(x, x_low)
     out = np.empty_like(flat)
-    if derivative == 0 and _few(order, order_low, flat, low, out):
-        pass
+    if derivative == 0 and _too_few(order, order_low, flat.size):
+        few_pairs(order, order_low, flat, low, out, _NO_LOW, False)
     elif derivative == 0:
         j_values(table_of(order, order_low), flat, low, out)
     else:
@@ -203,7 +198,9 @@ def bessel_j(order: Any, x: Any, *, derivative: int = 0) -> Any:
 def _one_point(order: float, x: float) -> Any:
     """Evaluate one float without the cost of arrays' checks; the same kernel, the same bits."""
     points, out = np.array((x,)), np.empty(1)
-    if not _few(order, 0.0, points, _NO_LOW, out):
+    if _too_few(order, 0.0, 1):
+        few_pairs(order, 0.0, points, _NO_LOW, out, _NO_LOW, False)
+    else:
         j_values(table_of(order), points, _NO_LOW, out)
     return out[0]
 
