@@ -4,7 +4,7 @@ from __future__ import annotations
 
 import math
 
-from fbexpand.kernels.bessel_eval import (
+from fbexpand.kernels.bessel_regions import (
     LARGE,
     TWO_OVER_PI,
     UNSCALE,
