@@ -36,9 +36,9 @@ from fbexpand.kernels.bessel_table import (
 from fbexpand.kernels.dd import fma, two_sum
 from fbexpand.kernels.jit import kernel
 from fbexpand.kernels.memory import address, load
-from fbexpand.types import FloatArray, IntArray
+from fbexpand.types import FloatArray
 
-BLOCK = 256
+BLOCK = 512
 ROWS = 12
 
 
@@ -114,29 +114,19 @@ def phase_block(
 
 @kernel
 def panel_block(
-    where: int,
-    size: int,
-    index: IntArray,
-    x: FloatArray,
-    low: FloatArray,
-    want_slope: bool,
-    out: FloatArray,
-    slope: FloatArray,
+    where: int, size: int, x: FloatArray, low: FloatArray, want_slope: bool, out: FloatArray, slope: FloatArray
 ) -> None:
-    """Fill out and slope at the `size` points listed in `index`, x0 <= x < X."""
+    """Fill out and slope at x0 <= x < X."""
     x0, inverse, width = load(where, X0), load(where, INVERSE_WIDTH), load(where, WIDTH)
-    for j in range(size):
-        n = index[j]
+    for n in range(size):
         out[n] = panel_value(where, x[n], low[n], x0, inverse, width)
     if want_slope:
-        for j in range(size):
-            n = index[j]
+        for n in range(size):
             slope[n] = panel_slope(where, x[n], low[n], x0, inverse, width)
     scaled = load(where, SCALED)
     if scaled > 0.0:
         end = x0 + scaled * width
-        for j in range(size):
-            n = index[j]
+        for n in range(size):
             if x[n] < end:
                 out[n] *= UNSCALE
                 if want_slope:
@@ -144,17 +134,28 @@ def panel_block(
 
 
 @kernel
+def point(where: int, x: float, low: float, want_slope: bool) -> tuple[float, float]:
+    """Return J and, if wanted, J' at x < x0, x >= 2^50 or NaN."""
+    if x >= LARGE:
+        return huge_pair(where, x, low)
+    return near_pair(where, x, low, want_slope)
+
+
+@kernel
 def evaluate(
     data: FloatArray, x: FloatArray, low: FloatArray, want_slope: bool, out: FloatArray, slope: FloatArray
 ) -> None:
-    """out[i], slope[i] = J_nu, J_nu' at x[i] + low[i]; an empty `low` stands for zeros, `slope` only if wanted."""
+    """out[i], slope[i] = J_nu, J_nu' at x[i] + low[i]; an empty `low` stands for zeros, `slope` only if wanted.
+
+    A block of which 7 in 8 points lie in one region runs through that region's loop whole, the strangers moved to its
+    edge, and these are then done again; otherwise the points are sorted first.
+    """
     where = address(data)
     x0, start = data[X0], data[X_PHASE]
     block = min(BLOCK, max(x.size, 1))
     work = np.empty((ROWS, block))
     zero = np.zeros(block)
-    index = np.empty((3, block + 1), np.int64)
-    inside, beyond, others = index[0], index[1], index[2]
+    index = np.empty(block + 1, np.int64)
     px, pl, po, ps = work[8], work[9], work[10], work[11]
     for begin in range(0, x.size, block):
         size = min(block, x.size - begin)
@@ -162,43 +163,68 @@ def evaluate(
         ls = low[begin : begin + size] if low.size > 0 else zero[:size]
         here = out[begin : begin + size]
         there = slope[begin : begin + size] if want_slope else here
-        i = int(np.int64(0))  # a plain 0 would be a type of its own: the callees compiled once more for it
-        b = int(np.int64(0))
-        o = int(np.int64(0))
-        for n in range(size):
-            inside[i] = n
-            beyond[b] = n
-            others[o] = n
-            far = xs[n] >= start
-            huge = xs[n] >= LARGE
-            panel = (xs[n] >= x0) & (not far)
-            phase = far & (not huge)
-            i += panel
-            b += phase
-            o += not (panel | phase)
-        if i > 0:
-            panel_block(where, i, inside, xs, ls, want_slope, here, there)
-        if b == size:
-            phase_block(where, size, xs, ls, work, want_slope, here, there)
-        elif b > 0:
+        panels, phases = count_regions(xs, x0, start)
+        others = size - panels - phases
+        many = size - (size >> 3)
+        if phases >= many:
+            if phases == size:
+                phase_block(where, size, xs, ls, work, want_slope, here, there)
+            else:
+                for n in range(size):
+                    px[n] = xs[n] if (xs[n] >= start) & (xs[n] < LARGE) else start
+                phase_block(where, size, px, ls, work, want_slope, here, there)
+            phases = size
+        elif panels >= many:
+            if panels == size:
+                panel_block(where, size, xs, ls, want_slope, here, there)
+            else:
+                for n in range(size):
+                    px[n] = xs[n] if (xs[n] >= x0) & (xs[n] < start) else x0
+                panel_block(where, size, px, ls, want_slope, here, there)
+            panels = size
+        # what is left: panels unless they are done, phases likewise, and the others
+        if phases > 0 and phases < size:
+            b = int(np.int64(0))  # a plain 0 would be a type of its own: the callees compiled once more for it
+            for n in range(size):
+                index[b] = n
+                b += (xs[n] >= start) & (xs[n] < LARGE)
             for j in range(b):
-                px[j] = xs[beyond[j]]
-                pl[j] = ls[beyond[j]]
+                px[j], pl[j] = xs[index[j]], ls[index[j]]
             phase_block(where, b, px, pl, work, want_slope, po, ps)
             for j in range(b):
-                here[beyond[j]] = po[j]
-            if want_slope:
-                for j in range(b):
-                    there[beyond[j]] = ps[j]
-        for j in range(o):
-            n = others[j]
-            if xs[n] >= LARGE:
-                v, s = huge_pair(where, xs[n], ls[n])
-            else:
-                v, s = near_pair(where, xs[n], ls[n], want_slope)
-            here[n] = v
-            if want_slope:
-                there[n] = s
+                here[index[j]] = po[j]
+                if want_slope:
+                    there[index[j]] = ps[j]
+        if panels > 0 and panels < size:
+            b = int(np.int64(0))
+            for n in range(size):
+                index[b] = n
+                b += (xs[n] >= x0) & (xs[n] < start)
+            for j in range(b):
+                px[j], pl[j] = xs[index[j]], ls[index[j]]
+            panel_block(where, b, px, pl, want_slope, po, ps)
+            for j in range(b):
+                here[index[j]] = po[j]
+                if want_slope:
+                    there[index[j]] = ps[j]
+        if others > 0:
+            for n in range(size):
+                if not ((xs[n] >= x0) & (xs[n] < LARGE)):
+                    v, s = point(where, xs[n], ls[n], want_slope)
+                    here[n] = v
+                    if want_slope:
+                        there[n] = s
+
+
+@kernel
+def count_regions(x: FloatArray, x0: float, start: float) -> tuple[int, int]:
+    """Return how many points lie in panels, and how many where modulus and phase serve."""
+    inside = 0
+    beyond = 0
+    for n in range(x.size):
+        inside += (x[n] >= x0) & (x[n] < start)
+        beyond += (x[n] >= start) & (x[n] < LARGE)
+    return inside, beyond
 
 
 @kernel
