@@ -43,10 +43,33 @@ ROWS = 12
 
 
 @kernel
-def smooth_block(
-    where: int, size: int, first: int, want_slope: bool, y: FloatArray, d: FloatArray, g: FloatArray, u: FloatArray
+def smooth_values(
+    where: int, size: int, x: FloatArray, low: FloatArray, y: FloatArray, d: FloatArray, out: FloatArray
 ) -> None:
-    """Fill delta, g and, if wanted, dg/dy from the polynomials in y^2 whose coefficients begin at `first`."""
+    """Fill out where there are no panels of the phase: three loops, so that each keeps its coefficients in registers."""
+    first = int(load(where, PHASE_START))
+    start = load(where, X_PHASE)
+    ch, cl = load(where, first), load(where, first + 1)
+    scale = TWO_OVER_PI / start
+    c0, c1, c2, c3, c4, c5, c6, c7, c8 = nine_at(where, first + 2)
+    g0, g1, g2, g3, g4, g5, g6, g7, g8 = nine_at(where, first + 11)
+    for n in range(size):
+        v = start / x[n]
+        y[n] = v
+        d[n] = v * nine(v * v, c0, c1, c2, c3, c4, c5, c6, c7, c8)
+    for n in range(size):
+        k, h, l = reduced(x[n])
+        s, e1 = two_sum(h, ch)
+        s, e2 = two_sum(s, d[n])
+        _, d[n] = sine_cosine(k, s, l + e1 + e2 + (cl + low[n]))
+    for n in range(size):
+        v = y[n]
+        out[n] = nine(v * v, g0, g1, g2, g3, g4, g5, g6, g7, g8) * d[n] * math.sqrt(v * scale)
+
+
+@kernel
+def smooth_parts(where: int, size: int, first: int, y: FloatArray, d: FloatArray, g: FloatArray, u: FloatArray) -> None:
+    """Fill delta, g and dg/dy from the polynomials in y^2 whose coefficients begin at `first`."""
     c0, c1, c2, c3, c4, c5, c6, c7, c8 = nine_at(where, first + 2)
     g0, g1, g2, g3, g4, g5, g6, g7, g8 = nine_at(where, first + 11)
     for n in range(size):
@@ -54,11 +77,10 @@ def smooth_block(
         d[n] = y[n] * nine(z, c0, c1, c2, c3, c4, c5, c6, c7, c8)
     for n in range(size):
         g[n] = nine(y[n] * y[n], g0, g1, g2, g3, g4, g5, g6, g7, g8)
-    if want_slope:
-        for n in range(size):
-            z = y[n] * y[n]
-            v = nine(z, g1, 2.0 * g2, 3.0 * g3, 4.0 * g4, 5.0 * g5, 6.0 * g6, 7.0 * g7, 8.0 * g8, 0.0)
-            u[n] = 2.0 * y[n] * v
+    for n in range(size):
+        z = y[n] * y[n]
+        v = nine(z, g1, 2.0 * g2, 3.0 * g3, 4.0 * g4, 5.0 * g5, 6.0 * g6, 7.0 * g7, 8.0 * g8, 0.0)
+        u[n] = 2.0 * y[n] * v
 
 
 @kernel
@@ -77,12 +99,15 @@ def phase_block(
     panels = load(where, PHASE_PANELS)
     start = load(where, X_PHASE)
     y, c, e, p, d = work[0], work[1], work[2], work[3], work[4]
+    if panels == 0.0 and not want_slope:
+        smooth_values(where, size, x, low, y, d, out)
+        return
     g, u, sines = work[5], work[6], work[7]
     if panels == 0.0:
         ch, cl = load(where, first), load(where, first + 1)
         for n in range(size):
             y[n] = start / x[n]
-        smooth_block(where, size, first, want_slope, y, d, g, u)
+        smooth_parts(where, size, first, y, d, g, u)
         for n in range(size):
             k, h, l = reduced(x[n])
             s, e1 = two_sum(h, ch)
