@@ -41,6 +41,8 @@ def warm_up() -> None:
         bessel_zeros(order, 2, start=10**9)
         dini_roots(order, 1.0, 2, start=10**9)
         bessel_j(order, np.concatenate((np.geomspace(1e-3, 1e6, 60), order + points)))
+        bessel_j(order, 1.5)
+        bessel_j(order, np.array([1.5]), derivative=1)
 
 
 def _profile(r: np.ndarray) -> np.ndarray:

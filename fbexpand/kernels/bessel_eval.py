@@ -46,7 +46,7 @@ ROWS = 12
 def smooth_values(
     where: int, size: int, x: FloatArray, low: FloatArray, y: FloatArray, d: FloatArray, out: FloatArray
 ) -> None:
-    """Fill out where there are no panels of the phase: three loops, so that each keeps its coefficients in registers."""
+    """Fill out where the phase has no panels: three loops, so that each keeps its coefficients in registers."""
     first = int(load(where, PHASE_START))
     start = load(where, X_PHASE)
     ch, cl = load(where, first), load(where, first + 1)

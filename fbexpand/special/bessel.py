@@ -131,7 +131,9 @@ def bessel_j(order: Any, x: Any, *, derivative: int = 0) -> Any:
     J_nu(x) = sum_k (-1)^k (x/2)^(2k+nu) / (k! Gamma(k+nu+1)). The error is at most 3 eps times the modulus
     sqrt(J^2 + Y^2) for order < 100, 4 eps below 1000, 6 eps to 10^4, at any x >= order however large (x is taken
     as exact, and reduced with as many digits of pi as it needs); for x < order it is at most 20 eps of |J| down to
-    0.9 order and (4 + 2 order) eps below, gradual underflow aside.
+    0.9 order and (4 + 2 order) eps below, gradual underflow aside. Measured, it stays below 2 eps in all of these, and
+    in samples of orders up to 2e5; from 10^4 to the largest order accepted nothing is promised, and a table is large.
+    A few points at an order not seen before cost 4 to 20 microseconds each; more make its table, which is kept.
 
     Parameters
     ----------
