@@ -11,7 +11,7 @@ import numpy as np
 from fbexpand.analysis.quadrature import coefficients_of
 from fbexpand.estimates.origin import Origin
 from fbexpand.estimates.requirement import MOST_TERMS, measure_l2, predicted_terms
-from fbexpand.estimates.residual import root_of_squares, tails
+from fbexpand.estimates.residual import by_parseval, root_of_squares, tails
 from fbexpand.exceptions import TruncationWarning
 from fbexpand.expansion import Expansion
 from fbexpand.profiles.panels import Panels
@@ -26,8 +26,6 @@ FIRST_TERMS = 32
 BEST = 1.0 + 1e-6  # times the least error reached
 STOPPED = 0.8  # of the error with half the terms: it has stopped falling, even as slowly as beside a jump
 FLOOR = 1e-9  # of the norm: where that can only be rounding, in the sum or in the profile
-PARSEVAL = 1e-9  # of the norm squared: a difference of squares above it has digits to spare
-MARGIN = 1.0 + 1e-4  # for those it lacks
 
 
 def series_to_tolerance(
@@ -40,7 +38,7 @@ def series_to_tolerance(
     coefficients = coefficients_of(panels, basis, terms)
     errors = np.full((1, norm.size), np.inf)
     while True:
-        last = _by_parseval(coefficients, basis, norm)
+        last = by_parseval(basis, coefficients, norm)
         if terms == most or not np.any(last > limit):
             before = errors[-1]
             errors = _errors(panels, basis, coefficients, last)
@@ -60,14 +58,6 @@ def series_to_tolerance(
     if np.any(errors[-1] > limit):
         _warn(basis, panels, coefficients, errors[-1], limit, norm, settled)
     return series
-
-
-def _by_parseval(coefficients: Numeric, basis: Basis, norm: FloatArray) -> FloatArray:
-    """Return the L2 error (size,) by |f|^2 - sum |b_k|^2 where that does not cancel, else 0."""
-    rows = np.abs(coefficients.reshape(norm.size, -1)) * np.sqrt(basis.norms(coefficients.shape[-1]))
-    unit = np.where(norm > 0.0, norm, 1.0)
-    missing = 1.0 - np.sum((rows / unit[:, None]) ** 2, axis=1)
-    return np.where((missing > PARSEVAL) & (norm > 0.0), MARGIN * norm * np.sqrt(np.maximum(missing, 0.0)), 0.0)
 
 
 def _errors(panels: Panels, basis: Basis, coefficients: Numeric, last: FloatArray) -> FloatArray:

@@ -57,7 +57,7 @@ def crosscheck(
     >>> check.all_agree
     True
     >>> check.quadrature[0].round(12)
-    np.float64(1.108022261104)
+    np.float64(1.108022261219)
     """
     from fbexpand.crosscheck.quadrature import Rows, integrate
 

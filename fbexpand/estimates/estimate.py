@@ -56,7 +56,9 @@ def _parts(basis: Basis, origin: Origin, cuts: Sequence[int]) -> dict[str, Any]:
         edges = panels.edges
         rings = 0.5 * (edges[1:] - edges[:-1]) * (edges[1:] + edges[:-1])
         residual = np.asarray(panels.residual).reshape(-1, edges.size - 1)
-        quadrature = np.maximum(quadrature, np.sqrt(residual**2 @ rings)[None])
+        largest = residual.max(axis=1, keepdims=True)
+        unit = np.where((largest > 0.0) & np.isfinite(largest), largest, 1.0)  # squares neither over- nor underflow
+        quadrature = np.maximum(quadrature, unit.T * np.sqrt((residual / unit) ** 2 @ rings)[None])
         sup = np.where(unbounded(panels), np.inf, sup + residual.max(axis=1))
     return {
         "truncation": found.l2[back],

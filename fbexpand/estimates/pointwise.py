@@ -77,7 +77,8 @@ def windowed(
 
 def _measured(basis: Basis, origin: Origin, used: Numeric, r: FloatArray) -> FloatArray:
     panels = origin.panels
-    assert panels is not None
+    if panels is None:
+        raise ValueError("'origin' must know its profile (got none)")
     polynomials = panels.coefficients.reshape(used.shape[0], *panels.coefficients.shape[-2:])
     residual = np.asarray(panels.residual).reshape(used.shape[0], -1)
 

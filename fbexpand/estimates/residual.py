@@ -1,8 +1,7 @@
 """The error of partial sums, measured: f - S on the panels of the profile.
 
-The L2 error is the norm of f - S itself, because Parseval's difference of squares cancels below the square
-root of eps; for fewer terms the squares of the orthonormal coefficients left out are added to it, which does
-not cancel.
+The L2 error is Parseval's |f|^2 - sum |b_k|^2 where that has digits to spare; below, where it cancels, it is the norm
+of f - S itself. For fewer terms the squares of the orthonormal coefficients left out are added, which does not cancel.
 """
 
 from __future__ import annotations
@@ -32,6 +31,8 @@ MARGIN_L2 = 1.0005  # the quadrature in cells is not exact where f - S is not sm
 SAMPLED_MARGIN_L2 = 1.1
 MANY = 40  # numbers of terms asked for at once
 BLOCK = 1 << 21  # numbers held at once
+PARSEVAL = 1e-9  # of the norm squared: a difference of squares above it has digits to spare
+MARGIN_PARSEVAL = 1.0 + 1e-4  # for those it lacks
 THINNED = 256  # points at which the sum of the moduli is looked at
 
 
@@ -56,6 +57,15 @@ def tails(basis: Basis, coefficients: Numeric, cuts: Sequence[int]) -> FloatArra
     return np.ascontiguousarray((unit * np.sqrt(left_out))[:, np.asarray(cuts, dtype=np.int64)].T)
 
 
+def by_parseval(basis: Basis, coefficients: Numeric, norm: FloatArray) -> FloatArray:
+    """Return the L2 error (size,) by |f|^2 - sum |b_k|^2 where that does not cancel, else 0."""
+    rows = np.abs(coefficients.reshape(norm.size, -1)) * np.sqrt(basis.norms(coefficients.shape[-1]))
+    unit = np.where(norm > 0.0, norm, 1.0)
+    missing = 1.0 - np.sum((rows / unit[:, None]) ** 2, axis=1)
+    known = (missing > PARSEVAL) & (norm > 0.0)
+    return np.where(known, MARGIN_PARSEVAL * norm * np.sqrt(np.maximum(missing, 0.0)), 0.0)
+
+
 def root_of_squares(first: FloatArray, second: FloatArray) -> FloatArray:
     """Return sqrt(first^2 + second^2) without overflow."""
     return np.asarray(np.hypot(first, second))
@@ -64,7 +74,8 @@ def root_of_squares(first: FloatArray, second: FloatArray) -> FloatArray:
 def measure(basis: Basis, origin: Origin, cuts: Sequence[int], *, want_sup: bool = True) -> Measured:
     """Measure the errors of the partial sums of `cuts` (ascending) terms against the panels of `origin`."""
     panels = origin.panels
-    assert panels is not None
+    if panels is None:
+        raise ValueError("'origin' must know its profile (got none)")
     coefficients = origin.coefficients.reshape(-1, origin.coefficients.shape[-1])
     size, terms = coefficients.shape
     cells = panel_cells(basis, panels, terms)
@@ -95,6 +106,8 @@ def measure(basis: Basis, origin: Origin, cuts: Sequence[int], *, want_sup: bool
         rounding_l2[batch] = np.maximum(of_sums * reach_of(basis), ROUNDING * _norm(target, heights, weights))
     sup *= SAMPLED_MARGIN if cells.sampled else SUP_MARGIN
     last *= SAMPLED_MARGIN_L2 if cells.sampled else MARGIN_L2
+    exact = by_parseval(basis, coefficients, panels.norm().reshape(-1))
+    last = np.where(exact > 0.0, exact, last)
     places = list(range(len(cuts))) if many else [ends.index(cut) for cut in cuts] if want_sup else []
     return Measured(
         root_of_squares(tails(basis, coefficients, cuts), last), sup[places], rounding, rounding_l2
