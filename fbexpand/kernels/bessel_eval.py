@@ -167,15 +167,14 @@ def point(where: int, x: float, low: float, want_slope: bool) -> tuple[float, fl
 
 
 @kernel
-def evaluate(
-    data: FloatArray, x: FloatArray, low: FloatArray, want_slope: bool, out: FloatArray, slope: FloatArray
-) -> None:
-    """out[i], slope[i] = J_nu, J_nu' at x[i] + low[i]; an empty `low` stands for zeros, `slope` only if wanted.
+def evaluate(data: FloatArray, x: FloatArray, low: FloatArray, out: FloatArray, slope: FloatArray) -> None:
+    """out[i], slope[i] = J_nu, J_nu' at x[i] + low[i]; an empty `low` stands for zeros, an empty `slope` is not wanted.
 
     A block of which 7 in 8 points lie in one region runs through that region's loop whole, the strangers moved to its
     edge, and these are then done again; otherwise the points are sorted first.
     """
     where = address(data)
+    want_slope = slope.size > 0
     x0, start = data[X0], data[X_PHASE]
     block = min(BLOCK, max(x.size, 1))
     work = np.empty((ROWS, block))
@@ -255,10 +254,10 @@ def count_regions(x: FloatArray, x0: float, start: float) -> tuple[int, int]:
 @kernel
 def j_values(data: FloatArray, x: FloatArray, low: FloatArray, out: FloatArray) -> None:
     """out[i] = J_nu(x[i] + low[i]); an empty `low` stands for zeros."""
-    evaluate(data, x, low, False, out, out)
+    evaluate(data, x, low, out, out[:0])
 
 
 @kernel
 def j_pairs(data: FloatArray, x: FloatArray, low: FloatArray, out: FloatArray, slope: FloatArray) -> None:
     """out[i], slope[i] = J_nu, J_nu' at x[i] + low[i]; an empty `low` stands for zeros."""
-    evaluate(data, x, low, True, out, slope)
+    evaluate(data, x, low, out, slope)

@@ -253,7 +253,7 @@ def station(
     if x >= high:
         jh, jl, dh, dl = debye_above(nh, nl, x)
         return jh, jl, dh, dl, e
-    start = math.floor(max(low, reach))
+    start = float(math.floor(max(low, reach)))
     up = x - start <= high - x
     chain = chains[0] if up else chains[1]
     if chain[0, 0] == 0.0:

@@ -118,49 +118,6 @@ def _series_from(nu: float) -> float:
 
 
 @kernel
-def _panel(head: FloatArray, i: int, work: Work, out: FloatArray) -> None:
-    """Fill panel i from one expansion at its centre."""
-    a, b, t, chains, wide = work[0], work[1], work[3], work[4], work[5]
-    nh, nl = head[NU], head[NU_LOW]
-    c = head[X0] + (i + 0.5) * head[WIDTH]
-    gh, gl = head[LOG_GAMMA], head[LOG_GAMMA_LOW]
-    e = int(np.int64(0))
-    if nh >= SMOOTH_ORDER:
-        jh, jl, dh, dl, e = station(nh, nl, c, gh, gl, chains, wide)
-    elif c < _series_from(nh):
-        jh, jl, dh, dl, e = ascending_pair(nh, nl, c, gh, gl)
-    else:
-        terms = _low_order_series(head, a, b)
-        jh, jl, dh, dl = series_pair(nh, nl, c, head[X_PHASE], a, b, terms)
-    taylor(nh, nl, c, jh, jl, dh, dl, t, EXACT_TERMS)
-    if i < head[SCALED]:
-        e += 640
-    half = e // 2
-    f, g = math.ldexp(1.0, int(half)), math.ldexp(1.0, int(e - half))
-    for k in range(PANEL_TERMS):
-        out[k] = t[k, 0] * f * g
-
-
-@kernel
-def _low_order_series(head: FloatArray, a: FloatArray, b: FloatArray) -> int:
-    """Fill the modulus series of an order below SMOOTH_ORDER, unless it is there; return its terms."""
-    if a[0, 0] == 0.0:
-        a[0, 1] = 0.0
-        head[MODULUS_USED] = modulus_series(head[NU], head[NU_LOW], head[X_PHASE], a, b)
-    return int(head[MODULUS_USED])
-
-
-@kernel
-def _smooth(head: FloatArray, work: Work, out: FloatArray) -> None:
-    """Fill the one polynomial of the phase below SMOOTH_ORDER."""
-    a, b = work[0], work[1]
-    terms = _low_order_series(head, a, b)
-    d = b.copy()
-    _integrate(head[X_PHASE], terms, d)
-    smooth_phase(head[NU], head[NU_LOW], a, d, terms, out)
-
-
-@kernel
 def workspace() -> Work:
     """Return what the parts of one order share while they are made: all zeros at first."""
     return (
@@ -187,16 +144,39 @@ def part_of(head: FloatArray, x: float) -> int:
 @kernel
 def part(head: FloatArray, i: int, work: Work, out: FloatArray) -> None:
     """Fill part i, PANEL_TERMS or PHASE_TERMS long, from the order and its place alone; `prepare` comes first."""
+    a, b, series, t, chains, wide = work
+    nh, nl, start = head[NU], head[NU_LOW], head[X_PHASE]
     panels, pieces = int(head[PANELS]), int(head[PHASE_PANELS])
-    if i < panels:
-        _panel(head, i, work, out)
-    elif pieces == 0:
-        _smooth(head, work, out)
-    else:
-        series = work[2]
+    if i >= panels and pieces > 0:
         if series[0, 0] == 0.0:
-            plain_series(head[NU], head[X_PHASE], series)
-        phase_panel(head[NU], head[NU_LOW], head[X_PHASE], (i - panels + 0.5) / pieces, series, out)
+            plain_series(nh, start, series)
+        phase_panel(nh, nl, start, (i - panels + 0.5) / pieces, series, out)
+        return
+    c = head[X0] + (i + 0.5) * head[WIDTH]
+    far = nh < SMOOTH_ORDER and c >= _series_from(nh)
+    if far and a[0, 0] == 0.0:
+        head[MODULUS_USED] = modulus_series(nh, nl, start, a, b)
+    terms = int(head[MODULUS_USED])
+    if i >= panels:  # the one polynomial of the phase below SMOOTH_ORDER
+        d = b.copy()
+        _integrate(start, terms, d)
+        smooth_phase(nh, nl, a, d, terms, out)
+        return
+    gh, gl = head[LOG_GAMMA], head[LOG_GAMMA_LOW]
+    e = int(np.int64(0))
+    if nh >= SMOOTH_ORDER:
+        jh, jl, dh, dl, e = station(nh, nl, c, gh, gl, chains, wide)
+    elif far:
+        jh, jl, dh, dl = series_pair(nh, nl, c, start, a, b, terms)
+    else:
+        jh, jl, dh, dl, e = ascending_pair(nh, nl, c, gh, gl)
+    taylor(nh, nl, c, jh, jl, dh, dl, t, EXACT_TERMS)
+    if i < head[SCALED]:
+        e += 640
+    half = e // 2
+    f, g = math.ldexp(1.0, int(half)), math.ldexp(1.0, int(e - half))
+    for k in range(PANEL_TERMS):
+        out[k] = t[k, 0] * f * g
 
 
 @kernel
