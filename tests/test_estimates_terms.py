@@ -2,13 +2,16 @@
 
 from __future__ import annotations
 
+import warnings
+
 import numpy as np
 import pytest
 from series_helpers import PROFILES, measured_series, true_errors
 
+from fbexpand.analysis import expand
 from fbexpand.bases import Dini, FourierBessel
 from fbexpand.estimates.defects import defect_tail
-from fbexpand.exceptions import UnreachableError
+from fbexpand.exceptions import TruncationWarning, UnreachableError
 from fbexpand.expansion import Expansion, stack
 
 BASIS = FourierBessel(0.0)
@@ -142,3 +145,34 @@ def test_sums_of_series():
     n = int((a + b).terms_for(1e-2, relative=False))
     errors = [a.error_estimate(m).l2 + b.error_estimate(min(m, 30)).l2 for m in (n - 1, n)]
     assert errors[1] <= 1e-2 < errors[0] * (1 + 1e-9)
+
+
+@pytest.mark.parametrize("basis", [FourierBessel(), FourierBessel(0.3), Dini(robin=1.0), Dini(1.0, robin=-4.0)])
+@pytest.mark.parametrize("tol", [1e-1, 1e-2, 1e-3, 1e-5])
+def test_expand_and_terms_for_agree(basis, tol):
+    """The terms that `expand` takes for a tolerance are those that `terms_for` names, and the estimate is below it."""
+
+    def profile(r):
+        return np.stack((np.exp(-9 * r**2) * r, (1 - r**2) * np.cos(9 * r), 1e-3 * np.sqrt(r)))
+
+    with warnings.catch_warnings():
+        warnings.simplefilter("ignore", TruncationWarning)
+        e = expand(profile, basis, tol=tol, max_terms=2000)
+    left = e.error_estimate().truncation
+    norm = np.hypot(e.norm(), left)
+    done = left <= tol * norm * (1 + 1e-12)
+    if e.terms < 2000:
+        assert done.all()
+    needed = np.array([int(one.terms_for(tol)) for one in e])
+    assert np.all((needed <= e.terms) == done)
+    assert needed.max() == e.terms or e.terms == 2000
+
+
+@pytest.mark.parametrize("scale", [1e-250, 1e-160, 1e160, 1e250])
+def test_estimates_neither_over_nor_underflow(scale):
+    basis = Dini(robin=1.0)
+    one = expand(lambda r: np.sqrt(r), basis, terms=30).error_estimate()
+    other = expand(lambda r: scale * np.sqrt(r), basis, terms=30).error_estimate()
+    for name in ("l2", "sup", "truncation"):
+        assert getattr(other, name) == pytest.approx(scale * getattr(one, name), rel=1e-6)
+    assert other.quadrature <= 1e-10 * other.l2

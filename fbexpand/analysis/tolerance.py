@@ -53,7 +53,12 @@ def series_to_tolerance(
     reached = errors <= np.maximum(limit, BEST * errors[-1])
     count = int(reached.argmax(axis=0).max()) + 1
     series = Expansion._make(
-        basis, coefficients[..., :count], panels=panels, evaluations=panels.evaluations, table=table
+        basis,
+        coefficients[..., :count],
+        panels=panels,
+        evaluations=panels.evaluations,
+        table=table,
+        left=errors[count - 1].reshape(panels.batch_shape),
     )
     if np.any(errors[-1] > limit):
         _warn(basis, panels, coefficients, errors[-1], limit, norm, settled)

@@ -18,12 +18,16 @@ MOST_ORIGINS = 16  # a sum of more series than this is judged by its coefficient
 
 @dataclass(frozen=True, eq=False)
 class Origin:
-    """Coefficients (*batch, terms), the profile's panels where known, and (*batch,) L2 errors."""
+    """Coefficients (*batch, terms), the profile's panels where known, and (*batch,) L2 errors.
+
+    `left` is what all coefficients leave of the profile, where the search for a tolerance has found it out.
+    """
 
     coefficients: Numeric
     panels: Panels | None
     quadrature: FloatArray
     table: FloatArray
+    left: FloatArray | None = None
 
     @property
     def batch_shape(self) -> tuple[int, ...]:
@@ -39,6 +43,7 @@ class Origin:
             spread_panels(self.panels, shape),
             np.broadcast_to(self.quadrature, shape),
             np.broadcast_to(self.table, shape),
+            None if self.left is None else np.broadcast_to(self.left, shape),
         )
 
     def take(self, index: Any) -> Origin:
@@ -52,6 +57,7 @@ class Origin:
             _panels(self.panels, pick),
             pick(self.quadrature, ()),
             pick(self.table, ()),
+            None if self.left is None else pick(self.left, ()),
         )
 
     def scaled(self, factor: Numeric) -> Origin:
@@ -71,6 +77,7 @@ class Origin:
             panels,
             _times(whole.quadrature, size),
             _times(whole.table, size),
+            None if whole.left is None else _times(whole.left, size),
         )
 
     def part(self, name: str) -> Origin:
@@ -82,11 +89,13 @@ class Origin:
         panels = self.panels
         if panels is not None:
             panels = replace(panels, coefficients=of(panels.coefficients))
-        return replace(self, coefficients=of(self.coefficients), panels=panels)
+        left = self.left if name == "conjugate" else None
+        return replace(self, coefficients=of(self.coefficients), panels=panels, left=left)
 
     def truncated(self, terms: int) -> Origin:
         """Keep the first `terms` coefficients."""
-        return replace(self, coefficients=self.coefficients[..., :terms])
+        left = self.left if terms >= self.coefficients.shape[-1] else None
+        return replace(self, coefficients=self.coefficients[..., :terms], left=left)
 
 
 def spread_panels(panels: Panels | None, shape: tuple[int, ...]) -> Panels | None:
@@ -130,7 +139,13 @@ def stacked(origins: list[Origin]) -> Origin:
         _stacked_panels([origin.panels for origin in origins]),
         np.stack([origin.quadrature for origin in origins]),
         np.stack([origin.table for origin in origins]),
+        _stacked_left([origin.left for origin in origins]),
     )
+
+
+def _stacked_left(left: list[FloatArray | None]) -> FloatArray | None:
+    known = [item for item in left if item is not None]
+    return np.stack(known) if len(known) == len(left) else None
 
 
 def _stacked_panels(panels: list[Panels | None]) -> Panels | None:

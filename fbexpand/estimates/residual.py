@@ -106,8 +106,11 @@ def measure(basis: Basis, origin: Origin, cuts: Sequence[int], *, want_sup: bool
         rounding_l2[batch] = np.maximum(of_sums * reach_of(basis), ROUNDING * _norm(target, heights, weights))
     sup *= SAMPLED_MARGIN if cells.sampled else SUP_MARGIN
     last *= SAMPLED_MARGIN_L2 if cells.sampled else MARGIN_L2
-    exact = by_parseval(basis, coefficients, panels.norm().reshape(-1))
-    last = np.where(exact > 0.0, exact, last)
+    if origin.left is not None:
+        last = np.array(origin.left).reshape(-1)
+    else:
+        exact = by_parseval(basis, coefficients, panels.norm().reshape(-1))
+        last = np.where(exact > 0.0, exact, last)
     places = list(range(len(cuts))) if many else [ends.index(cut) for cut in cuts] if want_sup else []
     return Measured(
         root_of_squares(tails(basis, coefficients, cuts), last), sup[places], rounding, rounding_l2

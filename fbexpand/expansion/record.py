@@ -77,6 +77,7 @@ class Expansion:
         evaluations: int = 0,
         quadrature: ArrayLike | None = None,
         table: ArrayLike | None = None,
+        left: FloatArray | None = None,
     ) -> Expansion:
         """Make a series that knows its profile's panels and the (*batch,) L2 errors of its coefficients."""
         coefficients = arguments.as_coefficients(coefficients)
@@ -86,7 +87,7 @@ class Expansion:
             for part in (quadrature, table)
         ]
         panels = spread_panels(panels, coefficients.shape[:-1])
-        return cls._derive(basis, coefficients, (Origin(coefficients, panels, *parts),), evaluations)
+        return cls._derive(basis, coefficients, (Origin(coefficients, panels, *parts, left),), evaluations)
 
     @classmethod
     def _derive(
