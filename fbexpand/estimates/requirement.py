@@ -122,6 +122,9 @@ def _with_defects(
 
 def _scale(basis: Basis, origins: Sequence[Origin], norm: str) -> FloatArray:
     """Return the norm of the profile: L2, or the largest modulus on the points of the cells."""
+    panels = origins[0].panels if len(origins) == 1 else None
+    if norm == "l2" and panels is not None:
+        return np.asarray(panels.norm()).reshape(-1)  # what `expand` takes its tolerance of
     terms = max(origin.coefficients.shape[-1] for origin in origins)
     size = int(np.prod(origins[0].batch_shape))
     total = np.zeros((size, terms), dtype=np.result_type(*(origin.coefficients for origin in origins)))
@@ -133,8 +136,8 @@ def _scale(basis: Basis, origins: Sequence[Origin], norm: str) -> FloatArray:
         return np.asarray(np.hypot(known, np.where(np.isfinite(missing), missing, 0.0)))
     r = cells_of(basis, np.array([0.0, float(basis.radius)]), terms).radii().ravel()
     largest = np.abs(series_at(basis, total, r)).max(axis=1)
-    if len(origins) == 1 and origins[0].panels is not None:
-        largest = largest_value(origins[0].panels)
+    if panels is not None:
+        largest = largest_value(panels)
     return np.asarray(largest)
 
 

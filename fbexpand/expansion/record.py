@@ -56,9 +56,7 @@ class Expansion:
         zero = np.zeros(coefficients.shape[:-1])
         self._fill(basis, coefficients, (Origin(coefficients, None, zero, zero),), 0)
 
-    def _fill(
-        self, basis: Basis, coefficients: Numeric, origins: tuple[Origin, ...], evaluations: int
-    ) -> None:
+    def _fill(self, basis: Basis, coefficients: Numeric, origins: tuple[Origin, ...], evaluations: int) -> None:
         put = object.__setattr__
         put(self, "basis", basis)
         put(self, "coefficients", coefficients)
@@ -82,12 +80,11 @@ class Expansion:
         """Make a series that knows its profile's panels and the (*batch,) L2 errors of its coefficients."""
         coefficients = arguments.as_coefficients(coefficients)
         zero = np.zeros(coefficients.shape[:-1])
-        parts = [
-            zero if part is None else zero + np.asarray(part, dtype=np.float64)
-            for part in (quadrature, table)
-        ]
+        first, second = (
+            zero if part is None else zero + np.asarray(part, dtype=np.float64) for part in (quadrature, table)
+        )
         panels = spread_panels(panels, coefficients.shape[:-1])
-        return cls._derive(basis, coefficients, (Origin(coefficients, panels, *parts, left),), evaluations)
+        return cls._derive(basis, coefficients, (Origin(coefficients, panels, first, second, left),), evaluations)
 
     @classmethod
     def _derive(
@@ -196,9 +193,7 @@ class Expansion:
         low, high = self._interval(a, b)
         if low == high:
             raise checks.value_error("b", f"different from a = {low!r}", high)
-        return calculus.integral_of(self.basis, self.coefficients, low, high) / (
-            0.5 * (high - low) * (high + low)
-        )
+        return calculus.integral_of(self.basis, self.coefficients, low, high) / (0.5 * (high - low) * (high + low))
 
     def norm(self) -> Any:
         """Return sqrt(integral_0^R |S|^2 r dr) of the sum, shape `(*batch,)`, by Parseval's identity."""
@@ -214,9 +209,7 @@ class Expansion:
         arithmetic.require_same_basis(self, other)
         terms = min(self.terms, other.terms)
         arithmetic.joint_shape(self.batch_shape, other.batch_shape, "other", other)
-        return np.sum(np.conjugate(self.orthonormal[..., :terms]) * other.orthonormal[..., :terms], axis=-1)[
-            ()
-        ]
+        return np.sum(np.conjugate(self.orthonormal[..., :terms]) * other.orthonormal[..., :terms], axis=-1)[()]
 
     # -- arithmetic
     # --------------------------------------------------------------------------------------------
@@ -280,9 +273,7 @@ class Expansion:
         """
         return questions.error_estimate(self, terms)
 
-    def terms_for(
-        self, tol: float, *, norm: str = "l2", at: float | None = None, relative: bool = True
-    ) -> Any:
+    def terms_for(self, tol: float, *, norm: str = "l2", at: float | None = None, relative: bool = True) -> Any:
         """Return the least number of terms whose error stays below `tol` from there on, shape `(*batch,)`.
 
         `norm` is "l2", "sup" or "at" (at the radius `at`). With `relative`, `tol` is relative to the norm of
