@@ -176,3 +176,22 @@ def test_estimates_neither_over_nor_underflow(scale):
     for name in ("l2", "sup", "truncation"):
         assert getattr(other, name) == pytest.approx(scale * getattr(one, name), rel=1e-6)
     assert other.quadrature <= 1e-10 * other.l2
+
+
+@pytest.mark.parametrize("basis", [FourierBessel(0.3), Dini(robin=1.0), Dini(1.0, robin=-4.0), Dini(0.3, robin=-2.0)])
+@pytest.mark.parametrize("name", ["waves", "kink", "step", "batch"])
+def test_they_agree_also_where_the_tolerance_is_next_to_an_error(basis, name):
+    """Large errors count: there the norm of the sum and what it misses add up to the profile's norm."""
+    breaks = {"kink": [0.5], "step": [0.4]}.get(name, [])
+
+    def profile(r):
+        return np.stack((1 - r**2, r**3, np.exp(-3 * r))) if name == "batch" else PROFILES[name][0](r)
+
+    norm = expand(profile, basis, terms=1, breaks=breaks)._origins[0].panels.norm()
+    errors = expand(profile, basis, terms=200, breaks=breaks).error_estimate([1, 2, 3, 9, 20, 64]).truncation
+    for error in errors:
+        for shift in (-1e-3, -1e-8, 1e-8, 1e-5, 1e-3):
+            tol = float(np.max(error / norm)) * (1 + shift)
+            e = expand(profile, basis, tol=tol, breaks=breaks, max_terms=1000)
+            assert np.all(e.error_estimate().truncation <= tol * norm * (1 + 1e-14)), tol
+            assert np.max(e.terms_for(tol)) == e.terms, tol

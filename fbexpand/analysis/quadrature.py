@@ -46,8 +46,50 @@ class Weights:
         return 16 * self.layout.radii.size + 8 * self.norms.size + (0 if self.modes is None else self.modes.nbytes)
 
 
-_kept: OrderedDict[Hashable, Weights] = OrderedDict()
-_lock = threading.Lock()
+class _Kept:
+    """The weights used last, up to a number of bytes."""
+
+    def __init__(self, limit: int) -> None:
+        self._limit = limit
+        self._entries: OrderedDict[Hashable, Weights] = OrderedDict()
+        self._total = 0
+        self._lock = threading.Lock()
+
+    def get(self, key: Hashable) -> Weights | None:
+        """Return what is kept under `key`, None if nothing is."""
+        with self._lock:
+            known = self._entries.get(key)
+            if known is not None:
+                self._entries.move_to_end(key)
+            return known
+
+    def keep(self, key: Hashable, weights: Weights) -> None:
+        """Keep the weights; those not used for longest go first."""
+        with self._lock:
+            old = self._entries.pop(key, None)
+            self._entries[key] = weights
+            self._total += weights.nbytes - (0 if old is None else old.nbytes)
+            while self._total > self._limit and len(self._entries) > 1:
+                self._total -= self._entries.popitem(last=False)[1].nbytes
+
+
+    def clear(self) -> None:
+        """Keep nothing."""
+        with self._lock:
+            self._entries.clear()
+            self._total = 0
+
+    def __len__(self) -> int:
+        return len(self._entries)
+
+    @property
+    def nbytes(self) -> int:
+        """Bytes held, about."""
+        with self._lock:
+            return sum(entry.nbytes for entry in self._entries.values())
+
+
+_kept = _Kept(KEPT_BYTES)
 
 
 def coefficients_of(panels: Panels, basis: Basis, count: int, start: int = 1) -> Numeric:
@@ -56,8 +98,10 @@ def coefficients_of(panels: Panels, basis: Basis, count: int, start: int = 1) ->
         -1, panels.edges.size - 1, panels.degrees
     )
     out = np.empty((rows.shape[0], count))
+    unit: Basis = getattr(basis, "unit", basis)  # profiles on any radius share the weights of the radius 1
+    edges = panels.edges if unit.radius == basis.radius else panels.edges / panels.edges[-1]
     for first, number in _chunks(start, count):
-        weights = weights_of(basis, panels.edges, panels.degrees, number, first)
+        weights = weights_of(unit, edges, panels.degrees, number, first)
         out[:, first - start : first - start + number] = _integrals(rows, weights, first) / weights.norms
     return from_rows(out, panels.coefficients[..., 0])
 
@@ -75,17 +119,10 @@ def weights_of(basis: Basis, edges: FloatArray, degrees: int, count: int, start:
     """Return the weights, from those kept where they are known; the least recently used go first."""
     own: Any = getattr(basis, "key", None)
     key = (id(basis) if own is None else own, edges.tobytes(), degrees, count, start)
-    with _lock:
-        known = _kept.get(key)
-        if known is not None:
-            _kept.move_to_end(key)
-            return known
-    weights = _make(basis, edges, degrees, count, start)
-    with _lock:
-        _kept[key] = weights
-        total = sum(entry.nbytes for entry in _kept.values())
-        while total > KEPT_BYTES and len(_kept) > 1:
-            total -= _kept.popitem(last=False)[1].nbytes
+    weights = _kept.get(key)
+    if weights is None:
+        weights = _make(basis, edges, degrees, count, start)
+        _kept.keep(key, weights)
     return weights
 
 

@@ -2,7 +2,8 @@
 
 from __future__ import annotations
 
-from typing import Any, ClassVar
+from dataclasses import replace
+from typing import Any, ClassVar, Self
 
 import numpy as np
 
@@ -51,6 +52,11 @@ class RadialBasis:
     def key(self) -> tuple[Any, ...]:
         """Equal for equal bases: the class's name and the parameters."""
         return (type(self).__name__, *(getattr(self, name) for name in self._names))
+
+    @property
+    def unit(self) -> Self:
+        """The same basis on the radius 1: modes at r / R and coefficients are the same."""
+        return self if self.radius == 1.0 else replace(self, radius=1.0)  # type: ignore[type-var]
 
     @property
     def growing(self) -> bool:

@@ -27,8 +27,10 @@ from fbexpand.kernels.memory import address, load
 from fbexpand.kernels.power import power_factor
 from fbexpand.types import FloatArray
 
-TAYLOR_TERMS = 26
+TAYLOR_TERMS = 26  # about the turning point, where the coefficients fall as (j!)^(-2/3)
+FAR_TERMS = 20  # far beyond it, where they do as 1/j!
 MAX_DERIVATIVE = 12
+_INVERSE = np.array([1.0 / ((j + 1) * (j + 2)) for j in range(TAYLOR_TERMS + MAX_DERIVATIVE)])
 _DEEPEST = 0.2  # of the radius: the Taylor series about lambda converges for d < 1
 
 
@@ -54,7 +56,7 @@ def rim_series(nu: float, robin: float, c: float, h: float, value: float, slope:
     for j in range(t.size - 2):
         s = (j + 1.0) * (2.0 * j + 1.0) * b * t[j + 1] + (j * j + q) * b2 * t[j] + h2 * b * (2.0 * old + b * older)
         older, old = old, t[j]
-        t[j + 2] = -s / ((j + 1.0) * (j + 2.0))
+        t[j + 2] = -s * _INVERSE[j]
         if j == 1 and abs(robin) < c:  # the same from c J' + robin J = 0, free of cancellation near robin = -1
             s = (1.0 + robin) * h2 - (robin * (2.0 + nu * nu) + 3.0 * nu * nu) * b2
             t[3] = value * b * s / 6.0
@@ -113,6 +115,9 @@ def plain_modes(
     a = np.zeros(SERIES_TERMS)
     first = power_series(nu, n, a) if n > 1 else 0
     where = address(data)
+    scaled = False
+    for k in range(count):
+        scaled |= scale[k] != 1.0
     for low in range(0, x.size, rows):
         here = min(rows, x.size - low)
         size = here * count
@@ -132,7 +137,7 @@ def plain_modes(
                     target[j] = near_axis(where, nu, n, z[j], zl[j], a, first)
                 else:
                     target[j] = by_recurrence(nu, n, z[j], value[j], target[j])
-        for i in range(here):
+        for i in range(here if scaled else 0):
             for k in range(count):
                 target[i * count + k] *= scale[k]
 
@@ -173,8 +178,9 @@ def rim_modes(
         if wanted:
             reach = min(1.0 / (turn * c), _DEEPEST)  # the d below which the series serves
             h = reach * c
-            rim_series(nu, robin, c, h, value[k], slope[k], t[: TAYLOR_TERMS + n])
-            for j in range(TAYLOR_TERMS):
+            terms = FAR_TERMS if c > 2.0 * nu + 10.0 else TAYLOR_TERMS
+            rim_series(nu, robin, c, h, value[k], slope[k], t[: terms + n])
+            for j in range(terms):
                 f = t[j + n]
                 for m in range(n):
                     f *= (j + n - m) / h
@@ -182,8 +188,8 @@ def rim_modes(
             for i in near[:nears]:
                 if d[i] <= reach:
                     v = -(d[i] + dl[i]) / reach
-                    s = t[TAYLOR_TERMS - 1]
-                    for j in range(TAYLOR_TERMS - 2, -1, -1):
+                    s = t[terms - 1]
+                    for j in range(terms - 2, -1, -1):
                         s = fma(s, v, t[j])
                     out[i * count + k] = s
 

@@ -8,7 +8,7 @@ from functools import lru_cache
 import numpy as np
 
 from fbexpand.profiles import chebyshev
-from fbexpand.records import ReadOnlyArrays
+from fbexpand.records import ReadOnlyArrays, read_only
 from fbexpand.types import FloatArray, Numeric
 
 DEGREES = 32  # coefficients on a divided panel: they resolve [h/4, h] beside a singularity at 0 to rounding
@@ -43,12 +43,12 @@ def first_look(edges: tuple[float, ...]) -> FirstLook:
     scans, weights, ends, matrices = [], [], [0], []
     for low, length in zip(cuts[:-1], lengths, strict=True):
         count = max(FEWEST, int(np.ceil(SCAN * length / cuts[-1])))
-        share = scan_points(count)
+        share, matrix = _scan(count)
         r = low + length * share
         scans.append(r)
         weights.append(r * (length / count))
         ends.append(ends[-1] + count)
-        matrices.append(chebyshev.evaluation(2.0 * share - 1.0, FIRST))
+        matrices.append(matrix)
     scan = np.concatenate(scans)
     return FirstLook(
         cuts,
@@ -58,6 +58,13 @@ def first_look(edges: tuple[float, ...]) -> FirstLook:
         tuple(ends),
         tuple(matrices),
     )
+
+
+@lru_cache(maxsize=32)
+def _scan(count: int) -> tuple[FloatArray, FloatArray]:
+    """Return `count` points in (0, 1), and the matrix from coefficients to values there."""
+    share = scan_points(count)
+    return read_only(share), read_only(chebyshev.evaluation(2.0 * share - 1.0, FIRST))
 
 
 def scan_points(count: int) -> FloatArray:
