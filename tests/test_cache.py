@@ -18,9 +18,12 @@ PACKAGE = Path(fbexpand.__file__).parent
 
 # one kernel that compiles in a second, and its bits
 SHORT = """
-from fbexpand.kernels.elementary import dd_exp
-print([x.hex() if isinstance(x, float) else x for x in dd_exp(1.5, 1e-20)])
-print("hits", sum(dd_exp.stats.cache_hits.values()), "misses", sum(dd_exp.stats.cache_misses.values()))
+import numpy as np
+from fbexpand.kernels.modes import radii_two_part
+parts = np.empty((4, 1))
+radii_two_part(np.array([0.3]), 0.7, *parts)
+print([x.hex() for x in parts.ravel().tolist()])
+print("hits", sum(radii_two_part.stats.cache_hits.values()), "misses", sum(radii_two_part.stats.cache_misses.values()))
 """
 LONG = """
 import numpy as np
@@ -280,14 +283,23 @@ def test_processes_starting_together_on_an_empty_cache(warm, tmp_path):
 def test_children_of_a_fork(warm, folder):
     code = """
 import os
-from fbexpand.kernels.elementary import dd_exp
+import numpy as np
+from fbexpand.kernels.modes import radii_two_part
+
+
+def bits():
+    parts = np.empty((4, 1))
+    radii_two_part(np.array([0.3]), 0.7, *parts)
+    return str([x.hex() for x in parts.ravel().tolist()])
+
+
 if BEFORE:
-    dd_exp(1.5, 1e-20)
+    bits()
 reads = []
 for _ in range(2):
     read, write = os.pipe()
     if os.fork() == 0:
-        os.write(write, str([x.hex() if isinstance(x, float) else x for x in dd_exp(1.5, 1e-20)]).encode())
+        os.write(write, bits().encode())
         os._exit(0)
     reads.append(read)
 for read in reads:

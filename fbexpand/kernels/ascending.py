@@ -26,7 +26,7 @@ import math
 
 from fbexpand.kernels.bounded import OPERATION, log_gamma_bounded, power_bounded
 from fbexpand.kernels.dd import dd_add, dd_div, dd_mul, dd_mul_d, two_prod, two_sum
-from fbexpand.kernels.jit import kernel
+from fbexpand.kernels.jit import callee, kernel
 from fbexpand.types import FloatArray
 
 _ROUND_UP = 1.0 + 2.0**-16
@@ -36,7 +36,7 @@ _SHIFT = 300
 _DOWN = 2.0**-300
 
 
-@kernel
+@callee
 def scaled(value: float, exponent: int) -> float:
     """Return value 2^exponent."""
     exponent = max(min(exponent, 3000), -3000)
@@ -45,7 +45,7 @@ def scaled(value: float, exponent: int) -> float:
     return value * f * f * f * math.ldexp(1.0, exponent - 3 * half)
 
 
-@kernel
+@callee
 def ascending_point(nu: float, x: float, terms: int, gh: float, gl: float, g_error: float) -> tuple[float, float]:
     """Return the partial sum at x >= 0 and the bound of |J_nu(x) - sum|."""
     if math.isnan(x):

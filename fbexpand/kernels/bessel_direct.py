@@ -13,7 +13,7 @@ import numpy as np
 
 from fbexpand.kernels.dd import dd_add, dd_add_d, dd_div, dd_mul, dd_mul_d, dd_sqrt, two_prod
 from fbexpand.kernels.elementary import PI1, PI2, dd_exp, dd_log, dd_sincos, split
-from fbexpand.kernels.jit import kernel
+from fbexpand.kernels.jit import callee
 from fbexpand.types import FloatArray
 
 TAYLOR_TERMS = 26
@@ -21,7 +21,7 @@ EXACT_TERMS = 12  # of these the first carry two parts; the rest are below 1e-12
 _INVERSE_PRODUCT = np.array([split(Fraction(1, (k + 1) * (k + 2))) for k in range(64)])
 
 
-@kernel
+@callee
 def ascending_pair(nh: float, nl: float, x: float, gh: float, gl: float) -> tuple[float, float, float, float, int]:
     """Return J and J' at x as (jh, jl, dh, dl, e), scaled by 2^-e; g = log Gamma(nu + 1)."""
     zh, zl = two_prod(0.5 * x, 0.5 * x)
@@ -50,7 +50,7 @@ def ascending_pair(nh: float, nl: float, x: float, gh: float, gl: float) -> tupl
     return jh, jl, dh, dl, e
 
 
-@kernel
+@callee
 def modulus_series(nh: float, nl: float, scale: float, a: FloatArray, b: FloatArray) -> int:
     """Fill (pi x / 2) M^2 = sum a_k (scale/x)^2k and its reciprocal theta' = sum b_k (scale/x)^2k; return the terms.
 
@@ -86,7 +86,7 @@ def modulus_series(nh: float, nl: float, scale: float, a: FloatArray, b: FloatAr
     return used
 
 
-@kernel
+@callee
 def phase_constant(nh: float, nl: float) -> tuple[float, float]:
     """Return (nu/2 + 1/4) pi less a multiple of 2 pi."""
     qh, ql = dd_add_d(0.5 * nh, 0.5 * nl, 0.25)
@@ -94,7 +94,7 @@ def phase_constant(nh: float, nl: float) -> tuple[float, float]:
     return dd_mul(qh, ql, PI1, PI2)
 
 
-@kernel
+@callee
 def series_pair(
     nh: float, nl: float, x: float, scale: float, a: FloatArray, b: FloatArray, terms: int
 ) -> tuple[float, float, float, float]:
@@ -144,7 +144,7 @@ def series_pair(
     return jh, jl, dh, dl
 
 
-@kernel
+@callee
 def taylor(
     nh: float, nl: float, c: float, jh: float, jl: float, dh: float, dl: float, t: FloatArray, exact: int
 ) -> None:
@@ -185,7 +185,7 @@ def taylor(
         t[k + 2, 1] = 0.0
 
 
-@kernel
+@callee
 def taylor_step(t: FloatArray, h: float, exact: int) -> tuple[float, float, float, float]:
     """Return the value and derivative of the Taylor polynomial `t` at distance h."""
     s = 0.0

@@ -34,7 +34,7 @@ from fbexpand.kernels.bessel_table import (
     X_PHASE,
 )
 from fbexpand.kernels.dd import fma, two_sum
-from fbexpand.kernels.jit import kernel
+from fbexpand.kernels.jit import callee, kernel
 from fbexpand.kernels.memory import address, load
 from fbexpand.types import FloatArray
 
@@ -42,7 +42,7 @@ BLOCK = 512
 ROWS = 12
 
 
-@kernel
+@callee
 def smooth_values(
     where: int, size: int, x: FloatArray, low: FloatArray, y: FloatArray, d: FloatArray, out: FloatArray
 ) -> None:
@@ -67,7 +67,7 @@ def smooth_values(
         out[n] = nine(v * v, g0, g1, g2, g3, g4, g5, g6, g7, g8) * d[n] * math.sqrt(v * scale)
 
 
-@kernel
+@callee
 def smooth_parts(where: int, size: int, first: int, y: FloatArray, d: FloatArray, g: FloatArray, u: FloatArray) -> None:
     """Fill delta, g and dg/dy from the polynomials in y^2 whose coefficients begin at `first`."""
     c0, c1, c2, c3, c4, c5, c6, c7, c8 = nine_at(where, first + 2)
@@ -83,7 +83,7 @@ def smooth_parts(where: int, size: int, first: int, y: FloatArray, d: FloatArray
         u[n] = 2.0 * y[n] * v
 
 
-@kernel
+@callee
 def phase_block(
     where: int,
     size: int,
@@ -137,7 +137,7 @@ def phase_block(
             out[n] = g[n] * out[n] * math.sqrt(y[n] * scale)
 
 
-@kernel
+@callee
 def panel_block(
     where: int, size: int, x: FloatArray, low: FloatArray, want_slope: bool, out: FloatArray, slope: FloatArray
 ) -> None:
@@ -158,7 +158,7 @@ def panel_block(
                     slope[n] *= UNSCALE
 
 
-@kernel
+@callee
 def point(where: int, x: float, low: float, want_slope: bool) -> tuple[float, float]:
     """Return J and, if wanted, J' at x < x0, x >= 2^50 or NaN."""
     if x >= LARGE:
@@ -166,7 +166,7 @@ def point(where: int, x: float, low: float, want_slope: bool) -> tuple[float, fl
     return near_pair(where, x, low, want_slope)
 
 
-@kernel
+@callee
 def evaluate(data: FloatArray, x: FloatArray, low: FloatArray, out: FloatArray, slope: FloatArray) -> None:
     """out[i], slope[i] = J_nu, J_nu' at x[i] + low[i]; an empty `low` stands for zeros, an empty `slope` is not wanted.
 
@@ -240,7 +240,7 @@ def evaluate(data: FloatArray, x: FloatArray, low: FloatArray, out: FloatArray, 
                         there[n] = s
 
 
-@kernel
+@callee
 def count_regions(x: FloatArray, x0: float, start: float) -> tuple[int, int]:
     """Return how many points lie in panels, and how many where modulus and phase serve."""
     inside = 0

@@ -12,10 +12,12 @@ from fbexpand.kernels.bessel_table import (
     PHASE_START,
     PHASE_TERMS,
     SCALED,
+    SMOOTH_ORDER,
     WIDTH,
     X0,
+    high_part,
     layout,
-    part,
+    low_part,
     part_of,
     prepare,
     workspace,
@@ -39,7 +41,10 @@ def few_pairs(
         small[:PANEL_START] = head
         panels = int(head[PANELS])
         if i >= 0:
-            part(head, i, work, small[PANEL_START:])
+            if nh < SMOOTH_ORDER:
+                low_part(head, i, work, small[PANEL_START:])
+            else:
+                high_part(head, i, work, small[PANEL_START:])
         if 0 <= i < panels:  # the table of this panel alone
             small[X0] = head[X0] + i * head[WIDTH]
             small[SCALED] = 1.0 if i < head[SCALED] else 0.0

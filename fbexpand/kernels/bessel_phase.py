@@ -15,7 +15,7 @@ from fbexpand.kernels.bessel_direct import phase_constant
 from fbexpand.kernels.bessel_station import debye_phase, debye_sums_above, root_of
 from fbexpand.kernels.dd import dd_add, dd_add_d, dd_div, dd_mul, two_prod
 from fbexpand.kernels.elementary import PI1, PI2
-from fbexpand.kernels.jit import kernel
+from fbexpand.kernels.jit import callee
 from fbexpand.types import FloatArray
 
 MODULUS_TERMS = 128
@@ -24,7 +24,7 @@ _DEGREE = 9  # of a panel, plus one
 _SMOOTH_TERMS = 9
 
 
-@kernel
+@callee
 def within_turn(vh: float, vl: float) -> tuple[float, float]:
     """Return v less a multiple of 2 pi, at most pi in size."""
     turns = 2.0 * math.floor(vh / (2.0 * PI1) + 0.5)
@@ -34,7 +34,7 @@ def within_turn(vh: float, vl: float) -> tuple[float, float]:
     return dd_add(vh, vl, -ph, -pl)
 
 
-@kernel
+@callee
 def smooth_phase(nh: float, nl: float, a: FloatArray, d: FloatArray, terms: int, out: FloatArray) -> None:
     """Fill -c in two parts, then delta/y and g as polynomials in y^2; terms left out are below 1e-17."""
     ch, cl = phase_constant(nh, nl)
@@ -50,7 +50,7 @@ def smooth_phase(nh: float, nl: float, a: FloatArray, d: FloatArray, terms: int,
         g[k] = 0.5 * s
 
 
-@kernel
+@callee
 def plain_series(nu: float, scale: float, series: FloatArray) -> None:
     """Fill rows 0 and 1 of `series` (2, MODULUS_TERMS) with a_k of m, and d_k+1 of delta = y sum d_k+1 y^2k."""
     a, d = series[0], series[1]
@@ -73,7 +73,7 @@ def plain_series(nu: float, scale: float, series: FloatArray) -> None:
     d[_REACH - 1 :] = 0.0
 
 
-@kernel
+@callee
 def _about(coefficients: FloatArray, y: float, out: FloatArray) -> None:
     """Fill `out` with the Taylor coefficients in t of sum c_k (y + t)^2k."""
     z = y * y
@@ -93,7 +93,7 @@ def _about(coefficients: FloatArray, y: float, out: FloatArray) -> None:
         out[0] = local[k]
 
 
-@kernel
+@callee
 def phase_panel(nh: float, nl: float, scale: float, y: float, series: FloatArray, out: FloatArray) -> None:
     """Fill a panel about y: delta - c (2), its linear term (2), delta_2..8 and g_0..8."""
     xh, xl = dd_div(scale, 0.0, y, 0.0)

@@ -26,12 +26,12 @@ from fbexpand.kernels.bessel_table import (
     X_PHASE,
 )
 from fbexpand.kernels.dd import fma, two_sum
-from fbexpand.kernels.jit import kernel
+from fbexpand.kernels.jit import callee, kernel
 from fbexpand.kernels.memory import address, load
 from fbexpand.types import FloatArray
 
 
-@kernel
+@callee
 def phase_point(where: int, x: float) -> float:
     """Return J_nu(x) for X <= x < 2^50."""
     first = int(load(where, PHASE_START))

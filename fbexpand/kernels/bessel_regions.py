@@ -26,7 +26,7 @@ from fbexpand.kernels.bessel_table import (
 )
 from fbexpand.kernels.dd import fma, quick_two_sum, two_prod, two_sum
 from fbexpand.kernels.elementary import HALF_PI1, HALF_PI2, HALF_PI3
-from fbexpand.kernels.jit import inline_kernel, kernel
+from fbexpand.kernels.jit import callee, inline_kernel
 from fbexpand.kernels.memory import load
 from fbexpand.kernels.power import power_factor
 from fbexpand.kernels.reduction import reduce_large
@@ -181,7 +181,7 @@ def sine_cosine(k: float, s: float, e: float) -> tuple[float, float]:
     return sine_out, (odd * sine + even * cosine) * (1.0 - 2.0 * mixed)
 
 
-@kernel
+@callee
 def near_pair(where: int, x: float, low: float, want_slope: bool) -> tuple[float, float]:
     """Return J and J' by the ascending series below the panels; 0 between it and where J underflows."""
     nu, nu_low = load(where, NU), load(where, NU_LOW)
@@ -225,7 +225,7 @@ def near_pair(where: int, x: float, low: float, want_slope: bool) -> tuple[float
     return value, slope
 
 
-@kernel
+@callee
 def huge_pair(where: int, x: float, low: float) -> tuple[float, float]:
     """Return J and J' beyond 2^50, where delta and g - 1 are constants to rounding."""
     if not x < math.inf:

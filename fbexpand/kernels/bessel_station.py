@@ -19,7 +19,7 @@ from fbexpand.kernels.bessel_direct import ascending_pair, taylor, taylor_step
 from fbexpand.kernels.dd import dd_add, dd_add_d, dd_div, dd_mul, dd_mul_d, dd_sqrt
 from fbexpand.kernels.debye import debye_polynomials
 from fbexpand.kernels.elementary import PI1, PI2, dd_exp, dd_log, dd_sincos
-from fbexpand.kernels.jit import kernel
+from fbexpand.kernels.jit import callee
 from fbexpand.types import FloatArray
 
 DEBYE_REACH = 8.7  # cube roots of nu below the turning point, from where Debye's expansions hold; beyond it
@@ -48,7 +48,7 @@ def _rows() -> tuple[np.ndarray, np.ndarray]:
 _U, _V = _rows()
 
 
-@kernel
+@callee
 def root_of(nh: float, nl: float, xh: float, xl: float) -> tuple[float, float]:
     """Return w = sqrt(|x^2 - nu^2|)."""
     ah, al = dd_add(xh, xl, -nh, -nl)
@@ -59,7 +59,7 @@ def root_of(nh: float, nl: float, xh: float, xl: float) -> tuple[float, float]:
     return dd_sqrt(ah, al)
 
 
-@kernel
+@callee
 def debye_below(nh: float, nl: float, x: float) -> tuple[float, float, float, float, int]:
     """Return J and J' at x < nu as (jh, jl, dh, dl, e), scaled by 2^-e."""
     wh, wl = root_of(nh, nl, x, 0.0)
@@ -109,7 +109,7 @@ def debye_below(nh: float, nl: float, x: float) -> tuple[float, float, float, fl
     return jh, jl, dh, dl, e
 
 
-@kernel
+@callee
 def debye_sums_above(
     nh: float, nl: float, wh: float, wl: float
 ) -> tuple[float, float, float, float, float, float, float, float]:
@@ -154,7 +154,7 @@ def debye_sums_above(
     return a, 0.0, bh, bl, c, 0.0, dh, dl
 
 
-@kernel
+@callee
 def debye_phase(nh: float, nl: float, xh: float, xl: float, wh: float, wl: float) -> tuple[float, float]:
     """Return nu acos(nu/x) + pi/4."""
     guess = math.atan2(wh, nh)
@@ -168,7 +168,7 @@ def debye_phase(nh: float, nl: float, xh: float, xl: float, wh: float, wl: float
     return dd_add(ph, pl, 0.25 * PI1, 0.25 * PI2)
 
 
-@kernel
+@callee
 def debye_above(nh: float, nl: float, x: float) -> tuple[float, float, float, float]:
     """Return J and J' at x > nu."""
     wh, wl = root_of(nh, nl, x, 0.0)
@@ -194,7 +194,7 @@ def debye_above(nh: float, nl: float, x: float) -> tuple[float, float, float, fl
     return jh, jl, dh, dl
 
 
-@kernel
+@callee
 def debye_from(nu: float) -> float:
     """Return a whole number from which on Debye's expansions hold beyond the turning point."""
     x = nu + DEBYE_REACH * np.cbrt(nu)
@@ -204,13 +204,13 @@ def debye_from(nu: float) -> float:
     return float(math.ceil(x))
 
 
-@kernel
+@callee
 def ascending_reach(nu: float) -> float:
     """Return up to where the ascending series keeps 20 digits in double-double."""
     return max(24.0, math.sqrt(44.0 * (nu + 1.0)))
 
 
-@kernel
+@callee
 def _towards(nh: float, nl: float, x: float, up: bool, chain: FloatArray, wide: FloatArray) -> int:
     """Extend a chain of places (c, J, J' in two parts each) toward x; return the last that lies before x.
 
@@ -234,7 +234,7 @@ def _towards(nh: float, nl: float, x: float, up: bool, chain: FloatArray, wide: 
         i += 1
 
 
-@kernel
+@callee
 def station(
     nh: float, nl: float, x: float, gh: float, gl: float, chains: FloatArray, wide: FloatArray
 ) -> tuple[float, float, float, float, int]:

@@ -26,7 +26,7 @@ from fbexpand.kernels.bessel_phase import MODULUS_TERMS, phase_panel, plain_seri
 from fbexpand.kernels.bessel_station import CHAIN, CHAIN_TERMS, debye_from, station
 from fbexpand.kernels.dd import dd_add, dd_add_d, dd_div, dd_mul, dd_mul_d
 from fbexpand.kernels.elementary import LN2_1, LN2_2, dd_log_gamma1
-from fbexpand.kernels.jit import kernel
+from fbexpand.kernels.jit import callee, kernel
 from fbexpand.types import FloatArray
 
 # the header: index -> meaning
@@ -43,7 +43,7 @@ Work: TypeAlias = tuple[FloatArray, FloatArray, FloatArray, FloatArray, FloatArr
 SCALE = 2.0**640  # panels where J is near underflow are kept multiplied by this
 
 
-@kernel
+@callee
 def _place_of(nu: float, exponent: float) -> float:
     """Return where log J_nu is about -`exponent`, by Debye's leading term, for nu > 60."""
     q = exponent / nu  # = alpha - tanh(alpha), x = nu / cosh(alpha), by Newton's method
@@ -87,7 +87,7 @@ def layout(nh: float, nl: float, head: FloatArray) -> int:
     return PANEL_START + panels * PANEL_TERMS + max(phase_panels, 1) * PHASE_TERMS
 
 
-@kernel
+@callee
 def prepare(data: FloatArray) -> None:
     """Fill what the ascending series needs."""
     nh, nl = data[NU], data[NU_LOW]
@@ -103,7 +103,7 @@ def prepare(data: FloatArray) -> None:
         data[SERIES_START + k] = qh
 
 
-@kernel
+@callee
 def _integrate(end: float, terms: int, b: FloatArray) -> None:
     """Turn theta' into delta: integrate termwise from infinity."""
     for k in range(1, terms):
@@ -111,13 +111,7 @@ def _integrate(end: float, terms: int, b: FloatArray) -> None:
         b[k, 0], b[k, 1] = dd_div(ph, pl, 2.0 * k - 1.0, 0.0)
 
 
-@kernel
-def _series_from(nu: float) -> float:
-    """Return where, below SMOOTH_ORDER, the modulus series takes over from the ascending one."""
-    return max(24.0, 1.25 * nu + 20.0)
-
-
-@kernel
+@callee
 def workspace() -> Work:
     """Return what the parts of one order share while they are made: all zeros at first."""
     return (
@@ -130,7 +124,7 @@ def workspace() -> Work:
     )
 
 
-@kernel
+@callee
 def part_of(head: FloatArray, x: float) -> int:
     """Return the part of the table that x >= 0 needs: a panel, the panels' number and a piece of the phase, or -1."""
     if x >= head[X_PHASE]:
@@ -141,53 +135,80 @@ def part_of(head: FloatArray, x: float) -> int:
     return int(np.int64(-1))
 
 
-@kernel
-def part(head: FloatArray, i: int, work: Work, out: FloatArray) -> None:
-    """Fill part i, PANEL_TERMS or PHASE_TERMS long, from the order and its place alone; `prepare` comes first."""
-    a, b, series, t, chains, wide = work
+@callee
+def low_part(head: FloatArray, i: int, work: Work, out: FloatArray) -> None:
+    """Fill part i of an order below SMOOTH_ORDER, from the order and its place alone; `prepare` comes first."""
+    a, b, t = work[0], work[1], work[3]
     nh, nl, start = head[NU], head[NU_LOW], head[X_PHASE]
-    panels, pieces = int(head[PANELS]), int(head[PHASE_PANELS])
-    if i >= panels and pieces > 0:
-        if series[0, 0] == 0.0:
-            plain_series(nh, start, series)
-        phase_panel(nh, nl, start, (i - panels + 0.5) / pieces, series, out)
-        return
     c = head[X0] + (i + 0.5) * head[WIDTH]
-    far = nh < SMOOTH_ORDER and c >= _series_from(nh)
+    far = c >= max(24.0, 1.25 * nh + 20.0)  # there the modulus series takes over from the ascending one
     if far and a[0, 0] == 0.0:
         head[MODULUS_USED] = modulus_series(nh, nl, start, a, b)
     terms = int(head[MODULUS_USED])
-    if i >= panels:  # the one polynomial of the phase below SMOOTH_ORDER
+    if i >= int(head[PANELS]):
         d = b.copy()
         _integrate(start, terms, d)
         smooth_phase(nh, nl, a, d, terms, out)
         return
-    gh, gl = head[LOG_GAMMA], head[LOG_GAMMA_LOW]
     e = int(np.int64(0))
-    if nh >= SMOOTH_ORDER:
-        jh, jl, dh, dl, e = station(nh, nl, c, gh, gl, chains, wide)
-    elif far:
+    if far:
         jh, jl, dh, dl = series_pair(nh, nl, c, start, a, b, terms)
     else:
-        jh, jl, dh, dl, e = ascending_pair(nh, nl, c, gh, gl)
+        jh, jl, dh, dl, e = ascending_pair(nh, nl, c, head[LOG_GAMMA], head[LOG_GAMMA_LOW])
     taylor(nh, nl, c, jh, jl, dh, dl, t, EXACT_TERMS)
-    if i < head[SCALED]:
-        e += 640
+    _scaled_copy(t, e, out)
+
+
+@callee
+def high_part(head: FloatArray, i: int, work: Work, out: FloatArray) -> None:
+    """Fill part i of an order from SMOOTH_ORDER on, likewise."""
+    series, t, chains, wide = work[2], work[3], work[4], work[5]
+    nh, nl, start = head[NU], head[NU_LOW], head[X_PHASE]
+    panels = int(head[PANELS])
+    if i >= panels:
+        if series[0, 0] == 0.0:
+            plain_series(nh, start, series)
+        phase_panel(nh, nl, start, (i - panels + 0.5) / head[PHASE_PANELS], series, out)
+        return
+    c = head[X0] + (i + 0.5) * head[WIDTH]
+    jh, jl, dh, dl, e = station(nh, nl, c, head[LOG_GAMMA], head[LOG_GAMMA_LOW], chains, wide)
+    taylor(nh, nl, c, jh, jl, dh, dl, t, EXACT_TERMS)
+    _scaled_copy(t, e + 640 if i < head[SCALED] else e, out)
+
+
+@callee
+def _scaled_copy(t: FloatArray, e: int, out: FloatArray) -> None:
+    """Copy the panel's coefficients times 2^e."""
     half = e // 2
     f, g = math.ldexp(1.0, int(half)), math.ldexp(1.0, int(e - half))
     for k in range(PANEL_TERMS):
         out[k] = t[k, 0] * f * g
 
 
+@callee
+def _place(data: FloatArray, i: int) -> FloatArray:
+    """Return where part i of the table lies."""
+    panels = int(data[PANELS])
+    if i < panels:
+        o = PANEL_START + i * PANEL_TERMS
+        return data[o : o + PANEL_TERMS]
+    o = int(data[PHASE_START]) + (i - panels) * PHASE_TERMS
+    return data[o : o + PHASE_TERMS]
+
+
 @kernel
-def fill(data: FloatArray) -> None:
-    """Fill a table whose header `layout` has written."""
+def fill_low(data: FloatArray) -> None:
+    """Fill a table below SMOOTH_ORDER, whose header `layout` has written."""
     prepare(data)
     work = workspace()
-    panels, first = int(data[PANELS]), int(data[PHASE_START])
-    for i in range(panels):
-        o = PANEL_START + i * PANEL_TERMS
-        part(data, i, work, data[o : o + PANEL_TERMS])
-    for i in range(max(int(data[PHASE_PANELS]), 1)):
-        o = first + i * PHASE_TERMS
-        part(data, panels + i, work, data[o : o + PHASE_TERMS])
+    for i in range(int(data[PANELS]) + 1):
+        low_part(data, i, work, _place(data, i))
+
+
+@kernel
+def fill_high(data: FloatArray) -> None:
+    """Fill a table from SMOOTH_ORDER on; apart from `fill_low`, as who needs one seldom needs the other compiled."""
+    prepare(data)
+    work = workspace()
+    for i in range(int(data[PANELS]) + int(data[PHASE_PANELS])):
+        high_part(data, i, work, _place(data, i))

@@ -39,7 +39,7 @@ from fbexpand.kernels.elementary import (
     dd_exp,
     dd_log,
 )
-from fbexpand.kernels.jit import kernel
+from fbexpand.kernels.jit import callee
 
 OPERATION = 2.0**-100
 EXP_ERROR = 2.0**-95
@@ -47,7 +47,7 @@ _LOG_FLOOR = 2.0**-94
 _LARGEST_EXPONENT = 2.0**40
 
 
-@kernel
+@callee
 def log_bounded(ah: float, al: float) -> tuple[float, float, float]:
     """Return log(a) in two parts and a bound of the error, for a > 0."""
     lh, ll = dd_log(ah, al)
@@ -63,7 +63,7 @@ def log_bounded(ah: float, al: float) -> tuple[float, float, float]:
     return lh, ll, error
 
 
-@kernel
+@callee
 def log_gamma_bounded(nu: float) -> tuple[float, float, float]:
     """Return log Gamma(nu + 1) in two parts and a bound of the error, for -1/2 < nu <= 1e9."""
     n = 1.0
@@ -97,7 +97,7 @@ def log_gamma_bounded(nu: float) -> tuple[float, float, float]:
     return rh, rl, 1.01 * error
 
 
-@kernel
+@callee
 def power_bounded(nu: float, x: float, gh: float, gl: float, g_error: float) -> tuple[float, float, int, float]:
     """Return h, low, e, bound of the relative error: (h + low) 2^e = (x/2)^nu / Gamma(nu + 1), 0 < x < inf.
 

@@ -17,7 +17,7 @@ from fractions import Fraction
 import numpy as np
 
 from fbexpand.kernels.dd import dd_add_d, dd_div, dd_mul, dd_mul_d, dd_sqrt
-from fbexpand.kernels.jit import kernel
+from fbexpand.kernels.jit import callee, kernel
 
 DEBYE_TERMS = 30
 DEBYE_FROM = 25.0  # w from which the terms fall below an eps before they grow
@@ -72,7 +72,7 @@ def debye_root(nu: float, zh: float, zl: float, sigma: float) -> tuple[float, fl
     return dd_mul_d(sh, sl, nu)
 
 
-@kernel
+@callee
 def debye_sums(nu: float, w: float) -> tuple[float, float]:
     """Return sum_k u_k / w^k and T."""
     p = nu / w

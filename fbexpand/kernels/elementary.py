@@ -12,7 +12,7 @@ from fractions import Fraction
 import numpy as np
 
 from fbexpand.kernels.dd import dd_add, dd_add_d, dd_div, dd_mul, quick_two_sum, two_prod
-from fbexpand.kernels.jit import kernel
+from fbexpand.kernels.jit import callee
 
 PI1, PI2, PI3 = 3.141592653589793, 1.2246467991473532e-16, -2.9947698097183397e-33  # pi in three doubles
 HALF_PI1, HALF_PI2, HALF_PI3 = PI1 / 2.0, PI2 / 2.0, PI3 / 2.0
@@ -42,7 +42,7 @@ STIRLING = np.array([split(_BERNOULLI[2 * k] / (2 * k * (2 * k - 1))) for k in r
 INVERSE_FACTORIAL = np.array([split(Fraction(1, math.factorial(k))) for k in range(30)])
 
 
-@kernel
+@callee
 def dd_exp(ah: float, al: float) -> tuple[float, float, int]:
     """Return h, l, e with exp(a) = (h + l) 2^e."""
     k = math.floor(ah / LN2_1 + 0.5)
@@ -65,7 +65,7 @@ def dd_exp(ah: float, al: float) -> tuple[float, float, int]:
     return sh, sl, int(k)
 
 
-@kernel
+@callee
 def dd_log(ah: float, al: float) -> tuple[float, float]:
     """Return log(a) for a > 0: one Newton step on the double's logarithm."""
     _, e = math.frexp(ah)
@@ -84,7 +84,7 @@ def dd_log(ah: float, al: float) -> tuple[float, float]:
     return dd_add(rh, rl, qh, ql)
 
 
-@kernel
+@callee
 def dd_sincos(ah: float, al: float) -> tuple[float, float, float, float]:
     """Return sin(a) and cos(a) for |a| up to about 1e9."""
     k = math.floor(ah / HALF_PI1 + 0.5)
@@ -113,7 +113,7 @@ def dd_sincos(ah: float, al: float) -> tuple[float, float, float, float]:
     return -ch, -cl, sh, sl
 
 
-@kernel
+@callee
 def dd_log_gamma1(nh: float, nl: float) -> tuple[float, float]:
     """Return log Gamma(nu + 1) for nu >= 0."""
     zh, zl = dd_add_d(nh, nl, 1.0)

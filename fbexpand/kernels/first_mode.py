@@ -26,7 +26,7 @@ from fbexpand.kernels.dd import (
 )
 from fbexpand.kernels.debye import DEBYE_FROM, debye_root, debye_sums
 from fbexpand.kernels.elementary import LN2_1, LN2_2, dd_log_gamma1
-from fbexpand.kernels.jit import inline_kernel, kernel
+from fbexpand.kernels.jit import callee, inline_kernel, kernel
 from fbexpand.kernels.power import exp_two_part, log_two_part
 from fbexpand.types import FloatArray
 
@@ -34,7 +34,7 @@ SERIES_TERMS = 48
 _TWO_PI = 6.283185307179586
 
 
-@kernel
+@callee
 def power_series(nu: float, n: int, a: FloatArray) -> int:
     """Fill `a` with the coefficients of a series in y = (z/2)^2; return the index of the first that is not 0.
 
@@ -64,7 +64,7 @@ def series_terms(z: float) -> int:
     return min(SERIES_TERMS, 12 + int(1.7 * z))
 
 
-@kernel
+@callee
 def compensated_sum(a: FloatArray, first: int, terms: int, yh: float, yl: float) -> float:
     """Return sum_{m >= first} a_m y^(m - first) by Horner's rule with its roundings carried along."""
     s: float = a[terms - 1]

@@ -2,7 +2,8 @@
 
 `kernel` is numba's njit without fastmath, with the GIL released, nothing compiled at import, and the compiled code
 kept on disk (`code_cache`). FBEXPAND_CACHE=0 in the environment turns that off, FBEXPAND_CACHE_DIR names another
-folder.
+folder. What only kernels call is a `callee`: its code is kept in theirs, and keeping it once more by itself would make
+the first compilation half as long again.
 """
 
 from __future__ import annotations
@@ -29,6 +30,14 @@ def kernel(function: F) -> F:
     if cache_folders()[1]:
         with contextlib.suppress(Exception):
             dispatcher._cache = CodeCache(function)
+    return cast(F, dispatcher)
+
+
+def callee(function: F) -> F:
+    """Compile `function` for the kernels that call it; nothing of its own is kept on disk."""
+    if JIT_DISABLED:
+        return function
+    dispatcher: Any = numba.njit(nogil=True, error_model="numpy")(function)
     return cast(F, dispatcher)
 
 

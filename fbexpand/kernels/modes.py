@@ -22,7 +22,7 @@ from fbexpand.kernels.first_mode import (
     quarter_square,
     series_terms,
 )
-from fbexpand.kernels.jit import inline_kernel, kernel
+from fbexpand.kernels.jit import callee, inline_kernel, kernel
 from fbexpand.kernels.memory import address, load
 from fbexpand.kernels.power import power_factor
 from fbexpand.types import FloatArray
@@ -40,7 +40,7 @@ def wave_number(nu: float, x: float) -> float:
     return math.sqrt(abs((x - nu) * (x + nu)) / (x * x) + 1.5 * (1.0 + nu) ** (-2.0 / 3.0))
 
 
-@kernel
+@callee
 def rim_series(nu: float, robin: float, c: float, h: float, value: float, slope: float, t: FloatArray) -> None:
     """Fill `t` with t_j h^j, J_nu(c + z) = sum t_j z^j; value and slope are t_0 and t_1.
 
@@ -62,7 +62,7 @@ def rim_series(nu: float, robin: float, c: float, h: float, value: float, slope:
             t[3] = value * b * s / 6.0
 
 
-@kernel
+@callee
 def near_axis(where: int, nu: float, n: int, z: float, zl: float, a: FloatArray, first: int) -> float:
     """Return the n-th derivative of J_nu at z + zl < sqrt(2 nu + 2); `a`, `first` as in `power_series`."""
     ph, pl = two_sum(nu, 2.0 * first - n)

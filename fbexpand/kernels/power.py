@@ -11,7 +11,7 @@ from decimal import Context, Decimal
 import numpy as np
 
 from fbexpand.kernels.dd import fma, quick_two_sum, two_prod, two_sum
-from fbexpand.kernels.jit import inline_kernel, kernel
+from fbexpand.kernels.jit import callee, inline_kernel
 from fbexpand.kernels.memory import from_bits, to_bits
 
 _DIGITS = Context(prec=50)
@@ -97,7 +97,7 @@ def exp_two_part(h: float, l: float) -> float:
     return float(v * from_bits((half + 1023) << 52) * from_bits((e - half + 1023) << 52))
 
 
-@kernel
+@callee
 def power_factor(nh: float, nl: float, x: float, relative: float, ch: float, cl: float) -> float:
     """Return x^nu (1 + relative)^nu exp(-c) for x > 0, |relative| of the order of eps."""
     h, l = log_two_part(x)

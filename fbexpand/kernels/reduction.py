@@ -12,7 +12,7 @@ import numpy as np
 
 from fbexpand.kernels.dd import dd_mul, quick_two_sum, two_sum
 from fbexpand.kernels.elementary import HALF_PI1, HALF_PI2
-from fbexpand.kernels.jit import kernel
+from fbexpand.kernels.jit import callee
 
 _BITS = 24
 _COUNT = 60  # 1440 bits: enough for the largest double
@@ -39,7 +39,7 @@ def _two_over_pi() -> list[float]:
 TWO_OVER_PI = np.array(_two_over_pi())
 
 
-@kernel
+@callee
 def reduce_large(x: float) -> tuple[int, float, float]:
     """Return k mod 4 and x - k pi/2 in two parts for finite x >= 2^30."""
     m, e = math.frexp(x)

@@ -13,14 +13,14 @@ import math
 
 from fbexpand.kernels.dd import dd_add, dd_add_d, dd_div, dd_mul, dd_mul_d, two_sum
 from fbexpand.kernels.elementary import HALF_PI1, HALF_PI2, PI1, PI2, dd_sincos
-from fbexpand.kernels.jit import kernel
+from fbexpand.kernels.jit import callee, kernel
 from fbexpand.kernels.roots_far import far_point, far_point_pair
 from fbexpand.kernels.roots_mcmahon import quarter_angle
 from fbexpand.kernels.roots_phase import phase_rise, phase_rise_double, phase_rise_pairs
 from fbexpand.types import FloatArray
 
 
-@kernel
+@callee
 def angle_pair(ah: float, al: float, bh: float, bl: float) -> tuple[float, float]:
     """Return atan(B / A) in two parts, A > 0."""
     swap = abs(bh) > ah
@@ -44,7 +44,7 @@ def angle_pair(ah: float, al: float, bh: float, bl: float) -> tuple[float, float
     return dd_add(side * HALF_PI1, side * HALF_PI2, -vh, -vl)
 
 
-@kernel
+@callee
 def _stiffness(x: float, nu: float, robin: float, a: float, b: float) -> float:
     """Return (x^2 - nu^2 + robin^2) / (A^2 + B^2) without overflow."""
     scale = 1.0 / max(1.0, abs(robin))
@@ -52,7 +52,7 @@ def _stiffness(x: float, nu: float, robin: float, a: float, b: float) -> float:
     return top / ((a * scale) ** 2 + (b * scale) ** 2)
 
 
-@kernel
+@callee
 def _at_end(nu: float, robin: float, panels: FloatArray, p: int) -> float:
     """Return theta - a at the outer end of panel p."""
     x = panels[p, 0]

@@ -17,7 +17,7 @@ import numpy as np
 
 from fbexpand.kernels.dd import dd_add, dd_add_d, dd_div, dd_mul, dd_mul_d, fma, quick_two_sum, two_sum
 from fbexpand.kernels.elementary import PI1
-from fbexpand.kernels.jit import kernel
+from fbexpand.kernels.jit import callee, kernel
 from fbexpand.kernels.roots_mcmahon import mcmahon_coefficients, quarter_angle
 from fbexpand.kernels.roots_phase import outer_end
 from fbexpand.types import FloatArray
@@ -43,7 +43,7 @@ def _nodes() -> FloatArray:
 NODE = _nodes()
 
 
-@kernel
+@callee
 def _beta_to_x(end: float, b: FloatArray, terms: int, beta: float, guess: float) -> tuple[float, float]:
     """Return x - beta where x - X sum b_k (X/x)^(2k-1) = beta."""
     x = guess
@@ -82,7 +82,7 @@ def _beta_to_x(end: float, b: FloatArray, terms: int, beta: float, guess: float)
     return dd_add_d(rh, rl, -(sh + sl) / (1.0 + zh * d))
 
 
-@kernel
+@callee
 def _fit(
     end: float, b: FloatArray, terms: int, scale: float, low: float, high: float, pieces: FloatArray, row: int
 ) -> float:
@@ -197,7 +197,7 @@ def far_zeros(
         done += m
 
 
-@kernel
+@callee
 def _row_of(pieces: FloatArray, count: int, t: float) -> int:
     row = count - 1
     while row > 0 and t < pieces[row, 0]:
@@ -205,7 +205,7 @@ def _row_of(pieces: FloatArray, count: int, t: float) -> int:
     return row
 
 
-@kernel
+@callee
 def far_point(nu: float, scale: float, pieces: FloatArray, count: int, beta: float) -> tuple[float, float, float]:
     """Return G and two derivatives with respect to beta; `count` = 0 means by McMahon's series."""
     if count == 0:
@@ -232,7 +232,7 @@ def far_point(nu: float, scale: float, pieces: FloatArray, count: int, beta: flo
     return y * v, g1, g2
 
 
-@kernel
+@callee
 def far_point_pair(
     nu: float, scale: float, pieces: FloatArray, count: int, bh: float, bl: float
 ) -> tuple[float, float, float, float, float, float]:

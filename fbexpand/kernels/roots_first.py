@@ -18,13 +18,13 @@ import math
 import numpy as np
 
 from fbexpand.kernels.dd import dd_add, dd_add_d, dd_div, dd_mul, dd_sqrt, two_prod, two_sum
-from fbexpand.kernels.jit import kernel
+from fbexpand.kernels.jit import callee, kernel
 
 TINY = 1e-30  # below this s, y = 2 (nu + 1) s to within 1e-30
 ASYMPTOTIC_TERMS = 60
 
 
-@kernel
+@callee
 def fraction_depth(nu: float, y: float) -> int:
     """Return a depth from which the continued fraction has converged to 1e-32."""
     x = math.sqrt(abs(y))
@@ -40,7 +40,7 @@ def fraction_depth(nu: float, y: float) -> int:
     return n
 
 
-@kernel
+@callee
 def fraction(nu: float, y: float, depth: int) -> tuple[float, float]:
     """Return D(y) and its derivative in doubles."""
     t = 2.0 * (nu + depth)
@@ -50,7 +50,7 @@ def fraction(nu: float, y: float, depth: int) -> tuple[float, float]:
     return d, 0.5 * (d - t) / t
 
 
-@kernel
+@callee
 def fraction_pair(nu: float, yh: float, yl: float, depth: int) -> tuple[float, float]:
     """Return D(y) in two parts."""
     th, tl = two_sum(nu, float(depth))
@@ -114,7 +114,7 @@ def first_root(nu: float, sh: float, sl: float, first_zero: float) -> tuple[floa
     return dd_sqrt(abs(yh), yl if yh > 0.0 else -yl)
 
 
-@kernel
+@callee
 def _tiny(nu: float, sh: float, sl: float) -> tuple[float, float]:
     up = 2.0**200 if abs(sh) > 1e-100 else 2.0**900
     down = 2.0**-100 if abs(sh) > 1e-100 else 2.0**-450
@@ -124,7 +124,7 @@ def _tiny(nu: float, sh: float, sl: float) -> tuple[float, float]:
     return xh * down, xl * down
 
 
-@kernel
+@callee
 def _large(nu: float, sh: float, sl: float) -> tuple[float, float]:
     """Return mu where mu I_nu'/I_nu = nu - s from the expansion in 1/mu."""
     uh, ul = dd_add_d(-sh, -sl, nu)

@@ -6,12 +6,12 @@ import math
 
 from fbexpand.kernels.dd import dd_add, dd_add_d, dd_div, dd_mul_d, two_sum
 from fbexpand.kernels.elementary import PI1, PI2
-from fbexpand.kernels.jit import kernel
+from fbexpand.kernels.jit import callee, kernel
 from fbexpand.kernels.roots_phase import phase_rise, phase_rise_double
 from fbexpand.types import FloatArray
 
 
-@kernel
+@callee
 def solve_panel(panels: FloatArray, p: int, th: float, tl: float) -> tuple[float, float]:
     """Return the x of panel p where theta has the two-part value th + tl."""
     rh, rl = dd_add(th, tl, -panels[p, 2], -panels[p, 3])

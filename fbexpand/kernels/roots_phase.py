@@ -18,7 +18,7 @@ import numpy as np
 from fbexpand.kernels.bessel_direct import modulus_series
 from fbexpand.kernels.dd import dd_add, dd_add_d, dd_div, dd_mul, dd_mul_d, two_prod
 from fbexpand.kernels.elementary import PI1, PI2
-from fbexpand.kernels.jit import inline_kernel, kernel
+from fbexpand.kernels.jit import callee, inline_kernel, kernel
 from fbexpand.types import FloatArray
 
 TERMS = 36
@@ -27,7 +27,7 @@ SINGLES = 4 + 2 * PAIRS - (PAIRS + 1)  # coefficient n > PAIRS stands at SINGLES
 WIDTH = 4 + 2 * PAIRS + (TERMS - PAIRS)
 
 
-@kernel
+@callee
 def outer_end(nu: float) -> float:
     """Return the x from which the series of the modulus is good to 1e-26."""
     return 1.25 * nu + 30.0
@@ -58,7 +58,7 @@ def outer_series(nu: float, a: FloatArray, b: FloatArray) -> int:
     return terms
 
 
-@kernel
+@callee
 def _expand(nu: float, c: float, w: FloatArray, t: FloatArray, r: FloatArray) -> None:
     """Fill the Taylor coefficients t of w at c from its value and two derivatives, and r of 1/w."""
     kh, kl = two_prod(nu, nu)
@@ -123,7 +123,7 @@ def _expand(nu: float, c: float, w: FloatArray, t: FloatArray, r: FloatArray) ->
             r[n, 1] = 0.0
 
 
-@kernel
+@callee
 def _step(t: FloatArray, h: float, w: FloatArray) -> None:
     """Put the value and two derivatives of the Taylor polynomial t at distance h into w."""
     for d in range(3):
@@ -144,7 +144,7 @@ def _step(t: FloatArray, h: float, w: FloatArray) -> None:
         w[d, 0], w[d, 1] = sh, sl
 
 
-@kernel
+@callee
 def _length(t: FloatArray, r: FloatArray) -> float:
     """Return how far inward the expansions at a point are good to 1e-24."""
     h = math.inf

@@ -24,7 +24,7 @@ import math
 import numpy as np
 
 from fbexpand.kernels.dd import dd_div, dd_mul, dd_mul_d, quick_two_sum, two_prod, two_sum
-from fbexpand.kernels.jit import inline_kernel, kernel
+from fbexpand.kernels.jit import callee, inline_kernel, kernel
 from fbexpand.types import FloatArray
 
 BLOCK = 32
@@ -35,7 +35,7 @@ _HALF_DOWN = 2.0**-450
 _DOWN = 2.0**-900
 
 
-@kernel
+@callee
 def extra_orders(top: float, x: float) -> float:
     """Return how far above order `top` > x to start, so that the growing solution dies out below 2^-60 of J.
 
@@ -62,7 +62,7 @@ def _step(
     return quick_two_sum(sh, e + (pl - gl))
 
 
-@kernel
+@callee
 def tiny_points(nu: float, x: float, j: float, out: FloatArray) -> None:
     """Fill out (count,) for 0 <= x < TINY from j = J_nu(x), which may be 0."""
     h, low = j, 0.0

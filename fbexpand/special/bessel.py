@@ -11,7 +11,7 @@ import numpy as np
 from fbexpand import checks
 from fbexpand.kernels.bessel_eval import j_pairs, j_values
 from fbexpand.kernels.bessel_few import few_pairs
-from fbexpand.kernels.bessel_table import PANEL_START, fill, layout
+from fbexpand.kernels.bessel_table import PANEL_START, SMOOTH_ORDER, fill_high, fill_low, layout
 from fbexpand.types import FloatArray
 
 MAX_ORDER = 1e6
@@ -36,7 +36,10 @@ def table_of(order: float, order_low: float = 0.0) -> FloatArray:
             _tables.move_to_end(key)
             return data
     made = _blank(order, order_low)
-    fill(made)
+    if order < SMOOTH_ORDER:
+        fill_low(made)
+    else:
+        fill_high(made)
     with _lock:
         data = _tables.setdefault(key, made)
         _asked.pop(key, None)
