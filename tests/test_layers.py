@@ -22,7 +22,7 @@ LAYERS = (
     ("estimates",),
     ("expansion",),
     ("analysis",),
-    ("crosscheck", "fitting", "evolution", "warm_up"),
+    ("crosscheck", "warm_up"),
     ("command",),
     ("__init__", "__main__"),
 )
