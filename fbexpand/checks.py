@@ -116,6 +116,8 @@ def numeric_array(name: str, value: Any) -> Numeric:
 
 
 def _numbers(name: str, value: Any) -> Numeric:
+    if isinstance(value, np.ma.MaskedArray) and np.ma.is_masked(value):
+        raise value_error(name, "free of masked entries", value)
     try:
         array = np.asarray(value)
     except ValueError:

@@ -257,3 +257,11 @@ class TestRefusals:
         with pytest.raises(type(error)) as info:
             resolve(profile, (), 1.0)
         assert info.value is error
+
+
+def test_masked_values_of_a_profile_are_refused():
+    def profile(r):
+        return np.ma.masked_where(np.abs(r - 0.5) < 0.1, r)
+
+    with pytest.raises(ValueError, match="'profile' must be finite"):
+        resolve(profile, (), 1.0)

@@ -332,3 +332,10 @@ def test_bad_input(r, values, options, name, error):
     with pytest.raises(error, match=f"'{name}'") as info:
         RadialTable(r, values, **options)
     assert info.value.name == name
+
+
+def test_masked_values_are_refused_not_used():
+    values = np.ma.masked_array(np.ones(5), mask=[0, 1, 0, 0, 0])
+    with pytest.raises(ValueError, match="'values' must be free of masked entries"):
+        RadialTable(np.linspace(0, 1, 5), values)
+    RadialTable(np.linspace(0, 1, 5), np.ma.masked_array(np.ones(5)))

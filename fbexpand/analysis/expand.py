@@ -100,6 +100,7 @@ def expand(
     limit = checks.non_negative("atol", atol)
     share = _tolerance(tol, limit)
     most = checks.integer("max_terms", max_terms, 1)
+    checks.storable("max_terms", most, 2 * BYTES_PER_COEFFICIENT * most)
     panels, table = _panels(profile, basis, breaks)
     size = int(np.prod(panels.batch_shape))
     if terms is None:

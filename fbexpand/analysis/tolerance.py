@@ -90,7 +90,7 @@ def _warn(
     settled: BoolArray,
 ) -> None:
     """Warn about the profile that is furthest from its tolerance."""
-    with np.errstate(divide="ignore", over="ignore"):
+    with np.errstate(divide="ignore", over="ignore", invalid="ignore"):
         row = int(np.argmax(np.where(errors > limit, errors / limit, 0.0)))
     error, wanted = float(errors[row]), float(limit[row])
     which = f" of profile {row} of the batch" if errors.size > 1 else ""

@@ -12,10 +12,11 @@ if TYPE_CHECKING:
     from fbexpand.expansion.record import Expansion
 
 MOST_READ = 4096  # coefficients looked at for the decay of a large batch
+MOST_MEASURED = 8192  # coefficients of which the error is measured for the sake of the text: some milliseconds
 
 
 def describe(series: Expansion) -> str:
-    """Return the basis, the terms, the error where it is cheap, and the decay of the coefficients."""
+    """Return the basis, the terms, the error where it is cheap to know, and the decay of the coefficients."""
     words = [repr(series.basis), f"{series.terms} term{'s' if series.terms > 1 else ''}"]
     if series.batch_shape:
         words.append(f"batch {series.batch_shape}")
@@ -25,8 +26,12 @@ def describe(series: Expansion) -> str:
     rows = rows[: max(1, MOST_READ // series.terms)]
     decay = decay_of(series.basis, rows)
     known = series._known.get("estimate")
+    measurable = all(origin.panels is not None for origin in series._origins)
+    if known is None and measurable and series.coefficients.size <= MOST_MEASURED:
+        known = series.error_estimate()
     if known is not None:
-        words.append(f"L2 error {np.max(known.l2):.1e} ({known.source})")
+        most = "up to " if series.batch_shape else ""
+        words.append(f"L2 error {most}{np.max(known.l2):.1e} ({known.source})")
     elif decay.known:
         words.append(f"L2 tail about {np.max(decay.tail(series.terms)):.1e} by the law")
     words.append(_decay_words(rows, decay.known, decay.saturated, decay.power))

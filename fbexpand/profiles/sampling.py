@@ -67,6 +67,8 @@ class Sampler:
     def _as_numbers(self, found: Any) -> Numeric:
         if type(found) is np.ndarray and found.dtype == np.float64:
             return found
+        if isinstance(found, np.ma.MaskedArray) and np.ma.is_masked(found) and found.dtype.kind in "fiuc":
+            found = np.ma.filled(found.astype(np.result_type(found.dtype, np.float64)), np.nan)  # refused below
         try:
             values = np.asarray(found)
         except ValueError:

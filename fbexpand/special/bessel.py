@@ -170,7 +170,8 @@ def bessel_j(order: Any, x: Any, *, derivative: int = 0) -> Any:
     >>> bessel_j(0.0, [0.0, 1.0]).round(4)
     array([1.    , 0.7652])
     """
-    if type(x) is float and type(order) is float and derivative == 0 and 0.0 <= order <= MAX_ORDER and x >= 0.0:
+    plain = type(x) is float and type(order) is float and type(derivative) is int
+    if plain and derivative == 0 and 0.0 <= order <= MAX_ORDER and x >= 0.0:
         return _one_point(order + 0.0, x)
     n = checks.integer("derivative", derivative, 0, MAX_DERIVATIVE)
     points = checks.real_array("x", x)
