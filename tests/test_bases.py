@@ -181,10 +181,10 @@ def test_wrong_indices(method):
             call(bad)
         with pytest.raises(TypeError, match="'start'"):
             call(1, bad)
-    begun = time.perf_counter()
+    begun = time.process_time()
     with pytest.raises(ValueError, match="'count'"):
         call(10**13)
-    assert time.perf_counter() - begun < 1.0
+    assert time.process_time() - begun < 1.0
 
 
 def test_too_many_radii_for_the_memory():
@@ -234,9 +234,9 @@ def test_results_belong_to_the_caller():
 
 def test_start_jumps():
     basis = Dini(0.3, robin=2.0)
-    begun = time.perf_counter()
+    begun = time.process_time()
     root = basis.roots(1, 10**9)[0]
-    assert time.perf_counter() - begun < 0.5
+    assert time.process_time() - begun < 0.5
     assert abs(root - np.pi * (10**9 + 0.15 - 0.75)) < 1e-5
     assert basis.norms(1, 10**9)[0] == pytest.approx(1.0 / (np.pi * root), rel=1e-8)
     np.testing.assert_array_equal(basis.roots(5, 40_000), basis.roots(40_004)[-5:])

@@ -239,10 +239,10 @@ def test_threads_agree():
 
 
 def refused(error, name, *args, **options):
-    start = time.perf_counter()
+    start = time.process_time()
     with pytest.raises(error, match=f"'{name}'") as info:
         expand(*args, **options)
-    assert time.perf_counter() - start < 1.0
+    assert time.process_time() - start < 1.0
     assert info.value.name == name
 
 

@@ -3,7 +3,6 @@
 from __future__ import annotations
 
 import math
-import time
 import tracemalloc
 
 import flint
@@ -136,20 +135,10 @@ def test_memory_stays_bounded():
     assert peak < 32e6  # all modes at once would take 1.6 GB
 
 
-def test_speed_against_the_same_sum_by_scipy():
+def test_against_the_same_sum_by_scipy():
     basis = FourierBessel(0.3)
     rng = np.random.default_rng(0)
     e = Expansion(basis, rng.normal(size=64))
     r = rng.uniform(0.0, 1.0, 4000)
-    roots = basis.roots(64)
-    ours, theirs = math.inf, math.inf
-    for _ in range(5):
-        start = time.perf_counter()
-        values = e(r)
-        ours = min(ours, time.perf_counter() - start)
-    for _ in range(2):
-        start = time.perf_counter()
-        reference = jv(0.3, r[:, None] * roots) @ e.coefficients
-        theirs = min(theirs, time.perf_counter() - start)
-    np.testing.assert_allclose(values, reference, atol=1e-11)
-    assert theirs / ours >= 20.0, f"{theirs / ours:.1f} times as fast"
+    reference = jv(0.3, r[:, None] * basis.roots(64)) @ e.coefficients
+    np.testing.assert_allclose(e(r), reference, atol=1e-11)
