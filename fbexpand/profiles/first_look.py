@@ -9,7 +9,7 @@ import numpy as np
 
 from fbexpand.profiles import chebyshev
 from fbexpand.records import ReadOnlyArrays, read_only
-from fbexpand.types import FloatArray, Numeric
+from fbexpand.types import FloatArray, IntArray, Numeric
 
 DEGREES = 32  # coefficients on a divided panel: they resolve [h/4, h] beside a singularity at 0 to rounding
 FIRST = 64  # coefficients at the first look: most smooth profiles need no division
@@ -25,12 +25,13 @@ class FirstLook(ReadOnlyArrays):
     radii: FloatArray
     scan: FloatArray
     weights: FloatArray  # integral f r dr is near the sum of weights times f on the scan
-    ends: tuple[int, ...]  # the scan's points of panel p lie in scan[ends[p] : ends[p + 1]]
+    starts: IntArray  # the scan's points of panel p are those from scan[starts[p]] on
     matrices: tuple[FloatArray, ...]  # values on a panel's scan points = coefficients @ matrix
 
     def on_scan(self, coefficients: Numeric) -> Numeric:
-        """Return the polynomials (size, P, FIRST) at the scan's points, (size, m)."""
-        parts = [coefficients[:, p] @ matrix for p, matrix in enumerate(self.matrices)]
+        """Return polynomials of up to FIRST coefficients, (size, P, degrees), at the scan's points, (size, m)."""
+        degrees = coefficients.shape[2]
+        parts = [coefficients[:, p] @ matrix[:degrees] for p, matrix in enumerate(self.matrices)]
         return parts[0] if len(parts) == 1 else np.concatenate(parts, axis=1)
 
 
@@ -40,14 +41,14 @@ def first_look(edges: tuple[float, ...]) -> FirstLook:
     cuts = np.array(edges)
     lengths = np.diff(cuts)
     nodes = panel_nodes(cuts[:-1], cuts[1:], FIRST)
-    scans, weights, ends, matrices = [], [], [0], []
+    scans, weights, counts, matrices = [], [], [], []
     for low, length in zip(cuts[:-1], lengths, strict=True):
         count = max(FEWEST, int(np.ceil(SCAN * length / cuts[-1])))
         share, matrix = _scan(count)
         r = low + length * share
         scans.append(r)
         weights.append(r * (length / count))
-        ends.append(ends[-1] + count)
+        counts.append(count)
         matrices.append(matrix)
     scan = np.concatenate(scans)
     return FirstLook(
@@ -55,7 +56,7 @@ def first_look(edges: tuple[float, ...]) -> FirstLook:
         np.concatenate((nodes.ravel(), scan)),
         scan,
         np.concatenate(weights),
-        tuple(ends),
+        np.cumsum([0, *counts[:-1]], dtype=np.int64),
         tuple(matrices),
     )
 

@@ -29,42 +29,44 @@ class Verdict(NamedTuple):
     """Per profile and panel, (size, P)."""
 
     smooth: BoolArray
-    flat: BoolArray
+    flat: BoolArray  # False throughout where all coefficients have fallen to rounding
     height: FloatArray  # the largest modulus at the panel's points; more where f is steep
     level: FloatArray  # the largest of the last eight coefficients
     residual: FloatArray
 
 
 class Judge:
-    """Scales of the profiles, (size,), from the first look at them."""
+    """The largest moduli of the profiles and their L2 norms, (size,), from the first look at them."""
 
-    def __init__(self, values: Numeric, on_scan: Numeric, look: FirstLook) -> None:
-        moduli = np.abs(on_scan)
-        self.scale = np.abs(values).max(axis=1)
-        unit = np.where(self.scale > 0.0, self.scale, 1.0)
-        square = (moduli / unit[:, None]) ** 2 @ look.weights
+    def __init__(self, scale: FloatArray, on_scan: Numeric, look: FirstLook) -> None:
+        self.scale = scale
+        unit = np.where(scale > 0.0, scale, 1.0)
+        parts = np.abs(on_scan) / unit[:, None]
+        parts *= parts
         self.radius = float(look.edges[-1])
-        self.norm = np.maximum(unit * np.sqrt(square), 1e-8 * self.scale * self.radius)
+        self.norm = np.maximum(unit * np.sqrt(parts @ look.weights), 1e-8 * self.radius * scale)
 
     def verdict(self, low: FloatArray, high: FloatArray, nodes: Numeric, coefficients: Numeric) -> Verdict:
         """Judge panels by values at their points and coefficients, both (size, P, degrees)."""
         height = np.abs(nodes).max(axis=2)
-        eighths = np.abs(coefficients[:, :, -16:]).reshape(*height.shape, 4, 4).max(axis=3)
-        last = eighths[:, :, 3]
-        level = np.maximum(eighths[:, :, 2], last)
+        end = np.abs(coefficients[:, :, -16:])
+        last = end[:, :, 12:].max(axis=2)
+        level = np.maximum(end[:, :, 8:12].max(axis=2), last)
         floor = (SHARE * self.norm)[:, None] / np.sqrt(0.5 * (high - low) * (high + low))
-        smooth = fallen = last <= np.maximum(TAIL * height, floor)
-        flat = level >= FLAT * np.maximum(eighths[:, :, 0], eighths[:, :, 1])
-        if not fallen.all():
-            height = np.maximum(height, STEEP * high * steepness(nodes, low, high))
-            fallen = last <= np.maximum(TAIL * height, floor)
-            smooth = fallen | (flat & (level <= ROUNDING * height))
+        fallen = last <= np.maximum(TAIL * height, floor)
+        if fallen.all():
+            return Verdict(fallen, ~fallen, height, level, 2.0 * last)
+        flat = level >= FLAT * end[:, :, :8].max(axis=2)
+        height = np.maximum(height, STEEP * high * steepness(nodes, low, high))
+        fallen = last <= np.maximum(TAIL * height, floor)
+        smooth = fallen | (flat & (level <= ROUNDING * height))
         return Verdict(smooth, flat, height, level, np.where(fallen, 2.0 * last, 6.0 * level))
 
     def allowed(self, height: FloatArray, level: FloatArray) -> FloatArray:
         """Return by how much a resolved polynomial may differ from the profile between its points."""
         most = np.maximum(AGREES * height, AGREES_NOISE * level)
-        return np.asarray(np.maximum(most, (MISSED / self.radius) * self.norm.reshape(-1, *([1] * (most.ndim - 1)))))
+        least = (MISSED / self.radius) * self.norm
+        return np.asarray(np.maximum(most, least if most.ndim == 1 else least[:, None]))
 
     def noise(self, verdict: Verdict, height: FloatArray, level: FloatArray) -> BoolArray:
         """Whether halves look like noise that their wholes had too, (size, P), given the wholes' values."""

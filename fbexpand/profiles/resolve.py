@@ -33,12 +33,13 @@ def resolve(profile: Callable[..., Any], breaks: tuple[float, ...], radius: floa
     nodes = values[:, :split].reshape(values.shape[0], -1, FIRST)
     on_scan = values[:, split:]
     coefficients = nodes @ chebyshev.transform(FIRST)
-    judge = Judge(values, on_scan, look)
+    judge = Judge(sampler.scale, on_scan, look)
     verdict = judge.verdict(edges[:-1], edges[1:], nodes, coefficients)
     if verdict.smooth.all():
-        misses = np.maximum.reduceat(np.abs(on_scan - look.on_scan(coefficients)), look.ends[:-1], axis=1)
+        trimmed = _trimmed(coefficients, verdict)
+        misses = np.maximum.reduceat(np.abs(on_scan - look.on_scan(trimmed)), look.starts, axis=1)
         if (misses <= judge.allowed(verdict.height, verdict.level)).all():
-            return _panels(edges, _trimmed(coefficients, verdict), verdict.residual, sampler)
+            return _panels(edges, trimmed, verdict.residual, sampler)
     pieces = divide(sampler, judge, look, verdict, coefficients, on_scan)
     level_jumps(pieces)
     return _panels(
@@ -65,5 +66,5 @@ def _trimmed(coefficients: Numeric, verdict: Verdict) -> Numeric:
     """Leave out degrees that no profile needs, GRAIN at a time: those lost in the rounding of the others."""
     least = np.maximum(verdict.residual / 16.0, EPS * verdict.height)
     needed = (np.abs(coefficients) > least[..., None]).any(axis=(0, 1))
-    last = int(np.flatnonzero(needed)[-1]) if needed.any() else 0
+    last = needed.size - 1 - int(needed[::-1].argmax()) if needed.any() else 0
     return np.ascontiguousarray(coefficients[..., : GRAIN * (last // GRAIN + 1)])

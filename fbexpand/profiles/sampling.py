@@ -10,6 +10,7 @@ import numpy as np
 
 from fbexpand import checks
 from fbexpand.exceptions import ArgumentValueError
+from fbexpand.profiles.judge import BoolArray
 from fbexpand.types import FloatArray, Numeric
 
 TINY, HUGE = 1e-100, 1e100  # profiles between these are taken as they are
@@ -20,7 +21,7 @@ class Sampler:
     """A profile with its batch shape, found at the first call, and a count of the radii asked for.
 
     Values near the ends of the range of doubles come divided by a power of two, `unit`, so that slopes and
-    squares of them are ordinary numbers.
+    squares of them are ordinary numbers. `scale` (size,) are the largest moduli of the first call.
     """
 
     def __init__(self, profile: Callable[[FloatArray], Any]) -> None:
@@ -28,6 +29,7 @@ class Sampler:
         self.batch_shape: tuple[int, ...] = ()
         self.evaluations = 0
         self.unit: FloatArray | None = None
+        self.scale = np.zeros(1)
         self._called = False
 
     def __call__(self, r: FloatArray) -> Numeric:
@@ -58,10 +60,14 @@ class Sampler:
         values = values.reshape(-1, values.shape[-1] if values.ndim else 1)
         if values.shape[-1] != r.size:
             values = np.broadcast_to(values, (values.shape[0], r.size))
-        if not np.isfinite(values).all():
+        size = np.abs(values).max(axis=1)
+        ordinary = (size > TINY) & (size < HUGE)
+        if not ordinary.all() and not np.isfinite(values).all():  # NaN and inf are the largest moduli
             self._refuse(values, r)
         if first:
-            self.unit = _unit(values)
+            self.unit, self.scale = _unit(values, ordinary | (size == 0.0)), size
+            if self.unit is not None:
+                self.scale = np.abs(values / self.unit).max(axis=1)
         return values if self.unit is None else values / self.unit
 
     def _as_numbers(self, found: Any) -> Numeric:
@@ -93,14 +99,12 @@ class Sampler:
         )
 
 
-def _unit(values: Numeric) -> FloatArray | None:
-    """Return a power of two for every profile (size, 1); None where all are of ordinary size."""
-    size = np.abs(values).max(axis=1, keepdims=True)
-    ordinary = (size == 0.0) | ((size > TINY) & (size < HUGE))
+def _unit(values: Numeric, ordinary: BoolArray) -> FloatArray | None:
+    """Return a power of two for every profile (size, 1); None where all are of `ordinary` size."""
     if ordinary.all():
         return None
-    size = np.maximum(np.abs(values.real), np.abs(values.imag)).max(axis=1, keepdims=True)  # no overflow
-    return np.asarray(np.ldexp(1.0, np.where(ordinary, 0, np.frexp(size)[1] - 1)))
+    size = np.maximum(np.abs(values.real), np.abs(values.imag)).max(axis=1)  # no overflow
+    return np.asarray(np.ldexp(1.0, np.where(ordinary, 0, np.frexp(size)[1] - 1)))[:, None]
 
 
 def _one_at_a_time(profile: Callable[..., Any], r: FloatArray, error: Exception) -> bool:
