@@ -20,6 +20,7 @@ LAYERS = (
     ("bases", "profiles"),
     ("transform.direct", "transform"),  # direct sums of modes
     ("estimates",),
+    ("lifting",),
     ("expansion",),
     ("analysis",),
     ("crosscheck", "warm_up"),

@@ -13,6 +13,8 @@ from fbexpand.analysis.tolerance import series_to_tolerance
 from fbexpand.exceptions import ArgumentTypeError, ArgumentValueError
 from fbexpand.expansion import Expansion
 from fbexpand.expansion.arguments import as_basis
+from fbexpand.lifting.remainder import remainder
+from fbexpand.lifting.rim_terms import closed_part_of, condition_of
 from fbexpand.profiles.panels import Panels
 from fbexpand.profiles.resolve import resolve
 from fbexpand.profiles.table import RadialTable, place
@@ -21,6 +23,7 @@ from fbexpand.types import ArrayLike, FloatArray
 if TYPE_CHECKING:
     from fbexpand.bases import Basis
 
+MOST_LIFTED = 8  # more derivatives at the rim than that are rounding
 BYTES_PER_COEFFICIENT = 48  # of a profile: the coefficient and what is made of it; roots and norms besides
 
 
@@ -32,6 +35,7 @@ def expand(
     tol: float | None = None,
     atol: float = 0.0,
     breaks: ArrayLike = (),
+    lift_terms: int = 0,
     max_terms: int = 10_000,
 ) -> Expansion:
     """Expand a radial profile in a basis: f(r) = sum_k c_k phi_k(r).
@@ -58,6 +62,10 @@ def expand(
     breaks
         Radii inside (0, R) at which the profile, or a derivative of it, jumps; one that is smooth in between
         is resolved to rounding.
+    lift_terms
+        How many terms of the profile's expansion at the rim are subtracted in closed form before the coefficients
+        are taken, as a sum of powers r^(order + 2 j), `.closed_part`. The coefficients left fall two powers of k
+        faster for each, as far as axis and breaks allow, and the sum converges at the rim itself.
     max_terms
         With `tol`: the largest number of terms tried.
 
@@ -101,13 +109,22 @@ def expand(
     share = _tolerance(tol, limit)
     most = checks.integer("max_terms", max_terms, 1)
     checks.storable("max_terms", most, 2 * BYTES_PER_COEFFICIENT * most)
+    lifted = checks.integer("lift_terms", lift_terms, 0, MOST_LIFTED)
+    if lifted:
+        condition_of(basis)
     panels, table = _panels(profile, basis, breaks)
+    norm, part = panels.norm().reshape(-1), None
+    if lifted:
+        part = closed_part_of(basis, panels, lifted)
+        panels = remainder(panels, part)
     size = int(np.prod(panels.batch_shape))
     if terms is None:
-        return series_to_tolerance(panels, basis, share, limit, most, table)
+        return series_to_tolerance(panels, basis, np.maximum(share * norm, limit), most, table, part)
     checks.storable("terms", terms, BYTES_PER_COEFFICIENT * terms * (size + 1))
     coefficients = coefficients_of(panels, basis, terms)
-    return Expansion._make(basis, coefficients, panels=panels, evaluations=panels.evaluations, table=table)
+    return Expansion._make(
+        basis, coefficients, panels=panels, evaluations=panels.evaluations, table=table, closed_part=part
+    )
 
 
 def _tolerance(tol: Any, atol: float) -> float:

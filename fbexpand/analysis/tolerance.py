@@ -19,6 +19,7 @@ from fbexpand.types import FloatArray, Numeric
 
 if TYPE_CHECKING:
     from fbexpand.bases import Basis
+    from fbexpand.lifting.closed_part import ClosedPart
 
 BoolArray = np.ndarray[tuple[int, ...], np.dtype[np.bool_]]
 
@@ -29,11 +30,15 @@ FLOOR = 1e-9  # of the norm: where that can only be rounding, in the sum or in t
 
 
 def series_to_tolerance(
-    panels: Panels, basis: Basis, tol: float, atol: float, most: int, table: FloatArray | None
+    panels: Panels,
+    basis: Basis,
+    limit: FloatArray,
+    most: int,
+    table: FloatArray | None,
+    closed_part: ClosedPart | None,
 ) -> Expansion:
-    """Return the shortest series with an L2 truncation error of at most max(tol |f|, atol) for all profiles."""
+    """Return the shortest series with an L2 truncation error of at most `limit` (size,) for every profile."""
     norm = panels.norm().reshape(-1)
-    limit = np.maximum(tol * norm, atol)
     terms = min(FIRST_TERMS, most)
     coefficients = coefficients_of(panels, basis, terms)
     errors = np.full((1, norm.size), np.inf)
@@ -59,6 +64,7 @@ def series_to_tolerance(
         evaluations=panels.evaluations,
         table=table,
         left=errors[count - 1].reshape(panels.batch_shape),
+        closed_part=closed_part,
     )
     if np.any(errors[-1] > limit):
         _warn(basis, panels, coefficients, errors[-1], limit, norm, settled)

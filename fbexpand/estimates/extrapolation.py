@@ -61,7 +61,9 @@ def extrapolate(basis: Basis, origin: Origin, cuts: Sequence[int], *, want_sup: 
     coefficients = origin.coefficients.reshape(-1, origin.coefficients.shape[-1])
     decay = decay_of(basis, coefficients)
     terms = coefficients.shape[1]
-    l2 = root_of_squares(tails(basis, coefficients, cuts), SAFETY * decay.tail(terms))
+    # what is left may be known from elsewhere: a law in time, say, has damped it
+    left = SAFETY * decay.tail(terms) if origin.left is None else np.reshape(origin.left, -1)
+    l2 = root_of_squares(tails(basis, coefficients, cuts), left)
     if not want_sup:
         return Measured(l2, np.zeros_like(l2), np.zeros(l2.shape[1]), np.zeros(l2.shape[1]))
     edges = np.array([0.0, float(basis.radius)])
@@ -76,7 +78,8 @@ def extrapolate(basis: Basis, origin: Origin, cuts: Sequence[int], *, want_sup: 
     else:
         within = np.abs(values[-1] - values).max(axis=-1)[[ends.index(cut) for cut in cuts]]
     rounding = rounding_of(basis, coefficients, r)
-    return Measured(l2, SUP_MARGIN * within + beyond, rounding, rounding * reach_of(basis))
+    sup = np.where(origin.front, np.inf, SUP_MARGIN * within + beyond)
+    return Measured(l2, sup, rounding, rounding * reach_of(basis))
 
 
 def sup_beyond(basis: Basis, decay: Decay, blocks: Blocks) -> FloatArray:

@@ -20,7 +20,8 @@ MOST_ORIGINS = 16  # a sum of more series than this is judged by its coefficient
 class Origin:
     """Coefficients (*batch, terms), the profile's panels where known, and (*batch,) L2 errors.
 
-    `left` is what all coefficients leave of the profile, where the search for a tolerance has found it out.
+    `left` is what all coefficients leave of the profile, where the search for a tolerance has found it out or a law in
+    time predicts it. `front`: jumps move about in the field, so that nothing is known of its largest error.
     """
 
     coefficients: Numeric
@@ -28,6 +29,7 @@ class Origin:
     quadrature: FloatArray
     table: FloatArray
     left: FloatArray | None = None
+    front: bool = False
 
     @property
     def batch_shape(self) -> tuple[int, ...]:
@@ -44,6 +46,7 @@ class Origin:
             np.broadcast_to(self.quadrature, shape),
             np.broadcast_to(self.table, shape),
             None if self.left is None else np.broadcast_to(self.left, shape),
+            self.front,
         )
 
     def take(self, index: Any) -> Origin:
@@ -58,6 +61,7 @@ class Origin:
             pick(self.quadrature, ()),
             pick(self.table, ()),
             None if self.left is None else pick(self.left, ()),
+            self.front,
         )
 
     def scaled(self, factor: Numeric) -> Origin:
@@ -78,6 +82,7 @@ class Origin:
             _times(whole.quadrature, size),
             _times(whole.table, size),
             None if whole.left is None else _times(whole.left, size),
+            whole.front,
         )
 
     def part(self, name: str) -> Origin:
@@ -140,6 +145,7 @@ def stacked(origins: list[Origin]) -> Origin:
         np.stack([origin.quadrature for origin in origins]),
         np.stack([origin.table for origin in origins]),
         _stacked_left([origin.left for origin in origins]),
+        any(origin.front for origin in origins),
     )
 
 
@@ -158,7 +164,7 @@ def _stacked_panels(panels: list[Panels | None]) -> Panels | None:
         edges = np.unique(np.concatenate([item.edges for item in known]))
     degrees = max(item.coefficients.shape[-1] for item in known)
     shape = np.broadcast_shapes(*(item.coefficients.shape[:-2] for item in known))
-    pairs = [_regrid(item, edges, degrees) for item in known]
+    pairs = [regrid(item, edges, degrees) for item in known]
     return replace(
         known[0],
         edges=edges,
@@ -168,7 +174,7 @@ def _stacked_panels(panels: list[Panels | None]) -> Panels | None:
     )
 
 
-def _regrid(panels: Panels, edges: FloatArray, degrees: int) -> tuple[Numeric, FloatArray]:
+def regrid(panels: Panels, edges: FloatArray, degrees: int) -> tuple[Numeric, FloatArray]:
     """Write the same piecewise polynomial on finer edges, with `degrees` coefficients a panel."""
     old = panels.coefficients
     old = np.pad(old, [*[(0, 0)] * (old.ndim - 1), (0, degrees - old.shape[-1])])

@@ -39,7 +39,7 @@ class Curve:
 
 
 def required_terms(
-    basis: Basis, origins: Sequence[Origin], tol: float, norm: str, at: float | None, relative: bool
+    basis: Basis, origins: Sequence[Origin], tol: float | FloatArray, norm: str, at: float | None, relative: bool
 ) -> IntArray:
     """Return the least n whose truncation error stays below tol from n on, shape (size,)."""
     size = int(np.prod(origins[0].batch_shape))
@@ -56,7 +56,7 @@ def required_terms(
         floor += curve.floor
         power = np.minimum(power, curve.power)
         rate = np.minimum(rate, curve.rate)
-    limit = np.full(size, tol)
+    limit = np.broadcast_to(np.asarray(tol, dtype=np.float64), (size,)).copy()
     if relative:
         limit *= _scale(basis, origins, norm)
     worst_from = np.maximum.accumulate(errors[::-1], axis=0)[::-1]

@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+from collections.abc import Callable
 from typing import TYPE_CHECKING, Any
 
 import numpy as np
@@ -10,10 +11,12 @@ from fbexpand import checks
 from fbexpand.estimates.origin import MOST_ORIGINS, Origin
 from fbexpand.exceptions import ArgumentValueError
 from fbexpand.expansion.arguments import same_basis
+from fbexpand.expansion.whole import closed_sum
 from fbexpand.types import Numeric
 
 if TYPE_CHECKING:
     from fbexpand.expansion.record import Expansion
+    from fbexpand.lifting.closed_part import ClosedPart
 
 
 def require_same_basis(first: Expansion, second: Expansion, name: str = "other") -> None:
@@ -51,7 +54,9 @@ def add(first: Expansion, second: Expansion) -> Expansion:
     origins = tuple(origin.broadcast(shape) for origin in (*first._origins, *second._origins))
     if len(origins) > MOST_ORIGINS:
         origins = (_merged(coefficients, origins),)
-    return first._derive(first.basis, coefficients, origins, first.evaluations + second.evaluations)
+    part = closed_sum(first, second)
+    part = part if part is None else part.broadcast(shape)
+    return first._derive(first.basis, coefficients, origins, first.evaluations + second.evaluations, part)
 
 
 def _merged(coefficients: Numeric, origins: tuple[Origin, ...]) -> Origin:
@@ -72,7 +77,9 @@ def scale(series: Expansion, factor: Any, name: str = "factor", *, divide: bool 
         )
         checks.all_finite("coefficients", coefficients)
         origins = tuple(origin.scaled(1.0 / numbers if divide else numbers) for origin in series._origins)
-    return series._derive(series.basis, coefficients, origins, series.evaluations)
+        factors = numbers[..., None]
+        part = changed(series, lambda c: c / factors if divide else c * factors)
+    return series._derive(series.basis, coefficients, origins, series.evaluations, part)
 
 
 def select(series: Expansion, key: Any) -> Expansion:
@@ -84,7 +91,8 @@ def select(series: Expansion, key: Any) -> Expansion:
     terms = series.terms
     coefficients = series.coefficients.reshape(-1, terms)[index]
     origins = tuple(origin.take(index) for origin in series._origins)
-    return series._derive(series.basis, coefficients, origins, series.evaluations)
+    chosen = changed(series, lambda c: c.reshape(-1, c.shape[-1])[index])
+    return series._derive(series.basis, coefficients, origins, series.evaluations, chosen)
 
 
 def part(series: Expansion, name: str) -> Expansion:
@@ -94,10 +102,18 @@ def part(series: Expansion, name: str) -> Expansion:
     else:
         coefficients = np.array(getattr(series.coefficients, name))
     origins = tuple(origin.part(name) for origin in series._origins)
-    return series._derive(series.basis, coefficients, origins, series.evaluations)
+    closed = changed(series, lambda c: np.conjugate(c) if name == "conjugate" else getattr(c, name))
+    return series._derive(series.basis, coefficients, origins, series.evaluations, closed)
 
 
 def shorten(series: Expansion, terms: int) -> Expansion:
     """Return the series of the first `terms` terms."""
     origins = tuple(origin.truncated(terms) for origin in series._origins)
-    return series._derive(series.basis, series.coefficients[..., :terms], origins, series.evaluations)
+    return series._derive(
+        series.basis, series.coefficients[..., :terms], origins, series.evaluations, series.closed_part
+    )
+
+
+def changed(series: Expansion, change: Callable[[Numeric], Numeric]) -> ClosedPart | None:
+    """Return the closed part with its coefficients changed."""
+    return None if series.closed_part is None else series.closed_part.changed(change)

@@ -43,9 +43,9 @@ def laplacian_of(series: Expansion) -> Expansion:
             TruncationWarning,
             stacklevel=3,
         )
-    return series._derive(
-        series.basis, -series.coefficients * eigenvalues, tuple(origins), series.evaluations
-    )
+    part = None if series.closed_part is None else series.closed_part.laplacian()
+    coefficients = -series.coefficients * eigenvalues
+    return series._derive(series.basis, coefficients, tuple(origins), series.evaluations, part)
 
 
 def _diverges(series: Expansion, origin: Origin) -> np.ndarray[tuple[int, ...], np.dtype[np.bool_]]:

@@ -8,12 +8,13 @@ from typing import TYPE_CHECKING, Any
 import numpy as np
 
 from fbexpand import checks
+from fbexpand.estimates.cells import cells_of
 from fbexpand.estimates.estimate import estimate, source_of
 from fbexpand.estimates.pointwise import envelope
 from fbexpand.estimates.records import ErrorEstimate, PartialSum
 from fbexpand.estimates.requirement import required_terms
 from fbexpand.expansion.arguments import as_radii
-from fbexpand.transform.direct import series_at
+from fbexpand.expansion.whole import values_of
 from fbexpand.types import FloatArray
 
 if TYPE_CHECKING:
@@ -25,7 +26,7 @@ NORMS = ("l2", "sup", "at")
 def partial_sum(series: Expansion, r: FloatArray, terms: int) -> PartialSum:
     """Return the partial sum at r with the envelope of its error."""
     flat = r.ravel()
-    values = series_at(series.basis, series.coefficients[..., :terms], flat)
+    values = values_of(series, flat, terms)
     error = np.zeros((int(np.prod(series.batch_shape)), flat.size))
     if flat.size:
         for origin in series._origins:
@@ -73,5 +74,18 @@ def terms_for(series: Expansion, tol: Any, norm: Any, at: Any, relative: Any) ->
         )
     elif at is not None:
         raise checks.value_error("at", f"left out where norm is {kind!r}", at)
-    answer = required_terms(series.basis, series._origins, limit, kind, place, bool(relative))
+    size: FloatArray | float = 1.0
+    if relative and series.closed_part is not None:  # relative to f, not to what is left of it
+        size = _size(series, kind)
+    absolute = bool(relative) and series.closed_part is None
+    answer = required_terms(series.basis, series._origins, limit * size, kind, place, absolute)
     return answer.reshape(series.batch_shape)[()]
+
+
+def _size(series: Expansion, kind: str) -> FloatArray:
+    """Return the L2 norm, or the largest modulus on a grid that resolves the sum, shape (size,)."""
+    if kind == "l2":
+        return np.asarray(series.norm()).reshape(-1)
+    edges = np.array([0.0, float(series.basis.radius)])
+    r = cells_of(series.basis, edges, series.terms).radii().ravel()
+    return np.asarray(np.abs(values_of(series, r)).reshape(-1, r.size).max(axis=1))

@@ -10,13 +10,13 @@ import numpy as np
 
 from fbexpand import checks
 from fbexpand.estimates.origin import Origin, spread_panels
-from fbexpand.expansion import arguments, arithmetic, calculus, laplacian, questions, text
-from fbexpand.transform.direct import series_at
+from fbexpand.expansion import arguments, arithmetic, laplacian, questions, text, whole
 from fbexpand.types import ArrayLike, FloatArray, Numeric
 
 if TYPE_CHECKING:
     from fbexpand.bases import Basis
     from fbexpand.estimates.records import ErrorEstimate, PartialSum
+    from fbexpand.lifting.closed_part import ClosedPart
     from fbexpand.profiles.panels import Panels
 
 
@@ -29,7 +29,8 @@ class Expansion:
     (shorter ones are continued with zeros, batches broadcast), `*` and `/` with numbers or arrays over the
     batch. `e[i]` selects from the batch axes; `e(r)` is the sum at radii r, shape `(*batch, *r.shape)`.
     `evaluations` counts the values of the profile that were asked for, 0 for a series made from coefficients;
-    `closed_part` is None: nothing is subtracted before the coefficients are taken. Series are frozen, their
+    `closed_part`, None or a sum of powers r^(order + 2 j), is what `expand(..., lift_terms=...)` subtracted before the
+    coefficients were taken; every operation includes it. Series are frozen, their
     arrays read-only; `==` is identity.
 
     Raises TypeError for what is no basis or no numbers, ValueError for coefficients that are empty or not
@@ -44,7 +45,7 @@ class Expansion:
     basis: Basis
     coefficients: Numeric
     evaluations: int = field(init=False, default=0)
-    closed_part: None = field(init=False, default=None)
+    closed_part: ClosedPart | None = field(init=False, default=None)
     _origins: tuple[Origin, ...] = field(init=False, default=())
     _known: dict[Any, Any] = field(init=False, default_factory=dict)
 
@@ -54,14 +55,21 @@ class Expansion:
         basis = arguments.as_basis(self.basis)
         coefficients = arguments.as_coefficients(self.coefficients)
         zero = np.zeros(coefficients.shape[:-1])
-        self._fill(basis, coefficients, (Origin(coefficients, None, zero, zero),), 0)
+        self._fill(basis, coefficients, (Origin(coefficients, None, zero, zero),), 0, None)
 
-    def _fill(self, basis: Basis, coefficients: Numeric, origins: tuple[Origin, ...], evaluations: int) -> None:
+    def _fill(
+        self,
+        basis: Basis,
+        coefficients: Numeric,
+        origins: tuple[Origin, ...],
+        evaluations: int,
+        closed_part: ClosedPart | None,
+    ) -> None:
         put = object.__setattr__
         put(self, "basis", basis)
         put(self, "coefficients", coefficients)
         put(self, "evaluations", evaluations)
-        put(self, "closed_part", None)
+        put(self, "closed_part", closed_part)
         put(self, "_origins", origins)
         put(self, "_known", {})
 
@@ -76,6 +84,7 @@ class Expansion:
         quadrature: ArrayLike | None = None,
         table: ArrayLike | None = None,
         left: FloatArray | None = None,
+        closed_part: ClosedPart | None = None,
     ) -> Expansion:
         """Make a series that knows its profile's panels and the (*batch,) L2 errors of its coefficients."""
         coefficients = arguments.as_coefficients(coefficients)
@@ -84,19 +93,26 @@ class Expansion:
             zero if part is None else zero + np.asarray(part, dtype=np.float64) for part in (quadrature, table)
         )
         panels = spread_panels(panels, coefficients.shape[:-1])
-        return cls._derive(basis, coefficients, (Origin(coefficients, panels, first, second, left),), evaluations)
+        origins = (Origin(coefficients, panels, first, second, left),)
+        return cls._derive(basis, coefficients, origins, evaluations, closed_part)
 
     @classmethod
     def _derive(
-        cls, basis: Basis, coefficients: Numeric, origins: tuple[Origin, ...], evaluations: int = 0
+        cls,
+        basis: Basis,
+        coefficients: Numeric,
+        origins: tuple[Origin, ...],
+        evaluations: int = 0,
+        closed_part: ClosedPart | None = None,
     ) -> Expansion:
         """Make a series of coefficients that are known to be in order."""
         self = object.__new__(cls)
-        self._fill(basis, arguments.own(coefficients), origins, evaluations)
+        self._fill(basis, arguments.own(coefficients), origins, evaluations, closed_part)
         return self
 
     def __reduce__(self) -> tuple[Any, ...]:
-        return (type(self)._derive, (self.basis, self.coefficients, self._origins, self.evaluations))
+        parts = (self.basis, self.coefficients, self._origins, self.evaluations, self.closed_part)
+        return (type(self)._derive, parts)
 
     def __repr__(self) -> str:
         return text.describe(self)
@@ -160,7 +176,7 @@ class Expansion:
     def __call__(self, r: ArrayLike) -> Any:
         """Return the sum at radii r, shape `(*batch, *r.shape)`; ValueError for radii outside [0, R]."""
         radii = self._radii("r", r)
-        return _shaped(series_at(self.basis, self.coefficients, radii.ravel()), radii)
+        return _shaped(whole.values_of(self, radii.ravel()), radii)
 
     def derivative(self, r: ArrayLike, n: int = 1) -> Any:
         """Return the n-th derivative of the sum at r, shape `(*batch, *r.shape)`, in f / length^n.
@@ -174,7 +190,7 @@ class Expansion:
         """
         count = checks.integer("n", n, 0, MOST_DERIVATIVES)
         radii = self._radii("r", r)
-        return _shaped(calculus.derivative_at(self.basis, self.coefficients, radii.ravel(), count), radii)
+        return _shaped(whole.derivatives_of(self, radii.ravel(), count), radii)
 
     def integral(self, a: float = 0.0, b: float | None = None) -> Any:
         """Return the integral of f r dr from a to b (the rim by default), shape `(*batch,)`; no factor 2 pi.
@@ -183,7 +199,7 @@ class Expansion:
         r^order is not smooth. From b to a the sign is the other one.
         """
         low, high = self._interval(a, b)
-        return calculus.integral_of(self.basis, self.coefficients, low, high)
+        return whole.integral_of(self, low, high)
 
     def mean(self, a: float = 0.0, b: float | None = None) -> Any:
         """Return the mean over the area of the ring between radii a and b, shape `(*batch,)`, in units of f.
@@ -193,23 +209,19 @@ class Expansion:
         low, high = self._interval(a, b)
         if low == high:
             raise checks.value_error("b", f"different from a = {low!r}", high)
-        return calculus.integral_of(self.basis, self.coefficients, low, high) / (0.5 * (high - low) * (high + low))
+        return whole.integral_of(self, low, high) / (0.5 * (high - low) * (high + low))
 
     def norm(self) -> Any:
         """Return sqrt(integral_0^R |S|^2 r dr) of the sum, shape `(*batch,)`, by Parseval's identity."""
-        b = np.abs(self.orthonormal)
-        largest = b.max(axis=-1, keepdims=True)
-        unit = np.where(largest > 0.0, largest, 1.0)
-        return (unit[..., 0] * np.sqrt(np.sum((b / unit) ** 2, axis=-1)))[()]
+        return whole.norm_of(self)
 
     def inner(self, other: Expansion) -> Any:
         """Return integral_0^R conj(f) g r dr with this series as f and `other` as g, batches broadcast."""
         if not isinstance(other, Expansion):
             raise checks.type_error("other", "an Expansion", other)
         arithmetic.require_same_basis(self, other)
-        terms = min(self.terms, other.terms)
         arithmetic.joint_shape(self.batch_shape, other.batch_shape, "other", other)
-        return np.sum(np.conjugate(self.orthonormal[..., :terms]) * other.orthonormal[..., :terms], axis=-1)[()]
+        return whole.inner_of(self, other)
 
     # -- arithmetic
     # --------------------------------------------------------------------------------------------

@@ -11,6 +11,7 @@ from fbexpand import checks
 from fbexpand.estimates.origin import Origin, stacked
 from fbexpand.expansion.arithmetic import joint_shape, padded, require_same_basis
 from fbexpand.expansion.record import Expansion
+from fbexpand.lifting.closed_part import ClosedPart
 
 
 def stack(expansions: Iterable[Expansion]) -> Expansion:
@@ -43,7 +44,20 @@ def stack(expansions: Iterable[Expansion]) -> Expansion:
     terms = max(item.terms for item in items)
     coefficients = np.stack([padded(item.coefficients, terms, shape) for item in items])
     origins = _stacked_origins(items, shape, coefficients)
-    return Expansion._derive(items[0].basis, coefficients, origins, sum(item.evaluations for item in items))
+    evaluations = sum(item.evaluations for item in items)
+    return Expansion._derive(items[0].basis, coefficients, origins, evaluations, _stacked_parts(items, shape))
+
+
+def _stacked_parts(items: list[Expansion], shape: tuple[int, ...]) -> ClosedPart | None:
+    """Stack the closed parts, those that are not there as zeros."""
+    found = [item.closed_part for item in items if item.closed_part is not None]
+    if not found:
+        return None
+    zero = found[0].changed(lambda c: np.zeros((*shape, c.shape[-1])))
+    for part in found:
+        zero = zero.plus(part.changed(lambda c: 0.0 * c))  # now it has all powers
+    parts = [zero if item.closed_part is None else zero.plus(item.closed_part) for item in items]
+    return parts[0].changed(lambda _: np.stack([part.coefficients for part in parts]))
 
 
 def _stacked_origins(items: list[Expansion], shape: tuple[int, ...], coefficients: Any) -> tuple[Origin, ...]:

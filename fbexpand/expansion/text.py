@@ -20,6 +20,8 @@ def describe(series: Expansion) -> str:
     words = [repr(series.basis), f"{series.terms} term{'s' if series.terms > 1 else ''}"]
     if series.batch_shape:
         words.append(f"batch {series.batch_shape}")
+    if series.closed_part is not None:
+        words.append(f"closed part of {len(series.closed_part.powers)} powers")
     if np.iscomplexobj(series.coefficients):
         words.append("complex")
     rows = series.coefficients.reshape(-1, series.terms)
