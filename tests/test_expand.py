@@ -330,3 +330,39 @@ def test_nothing_warns():
         for scale in (1e-300, 1.0, 1e300):
             for profile in (np.sqrt, step, parabola, lambda r: 0.0 * r):
                 expand(lambda r, f=profile, s=scale: s * f(r), FourierBessel(0.3), terms=10)
+
+
+@pytest.mark.parametrize("most", [88, 150, 400, 1000, 3000])
+def test_evaluations_are_bounded_and_what_is_missing_is_stated(most):
+    basis = Dini(robin=1.0)
+    for profile, breaks in ((lambda r: np.abs(r - 0.3), 0.3), (lambda r: 1.0 * (r < 0.6), 0.6)):
+        calls = []
+
+        def counted(r, profile=profile, calls=calls):
+            calls.append(r.size)
+            return profile(r)
+
+        e = expand(counted, basis, terms=30, max_evaluations=most)
+        assert sum(calls) == e.evaluations <= most
+        exact = expand(profile, basis, terms=30, breaks=[breaks])
+        wrong = np.linalg.norm(e.orthonormal - exact.orthonormal)
+        assert wrong <= 1.5 * e.error_estimate().quadrature + 1e-14
+
+
+def test_a_denser_scan_finds_a_narrower_peak():
+    def peak(r):
+        return np.exp(-(((r - 0.4321) / 4e-5) ** 2))
+
+    exact = expand(peak, FourierBessel(), terms=20, breaks=[0.4321]).orthonormal
+    found = expand(peak, FourierBessel(), terms=20, scan=20_000)
+    assert np.abs(found.orthonormal - exact).max() <= 1e-13 * np.abs(exact).max()
+
+
+@pytest.mark.parametrize(("name", "bad"), [("scan", 0), ("scan", 10**9), ("max_evaluations", 87)])
+def test_wrong_numbers_of_evaluations(name, bad):
+    refused(ArgumentValueError, name, parabola, FourierBessel(), terms=3, **{name: bad})
+
+
+@pytest.mark.parametrize(("name", "bad"), [("scan", 1.5), ("scan", None), ("max_evaluations", "9")])
+def test_numbers_of_evaluations_of_a_wrong_type(name, bad):
+    refused(ArgumentTypeError, name, parabola, FourierBessel(), terms=3, **{name: bad})

@@ -15,6 +15,8 @@ from fbexpand.expansion import Expansion
 from fbexpand.expansion.arguments import as_basis
 from fbexpand.lifting.remainder import remainder
 from fbexpand.lifting.rim_terms import closed_part_of, condition_of
+from fbexpand.profiles.division import MOST_EVALUATIONS
+from fbexpand.profiles.first_look import FEWEST, FIRST, SCAN
 from fbexpand.profiles.panels import Panels
 from fbexpand.profiles.resolve import resolve
 from fbexpand.profiles.table import RadialTable, place
@@ -37,6 +39,8 @@ def expand(
     breaks: ArrayLike = (),
     lift_terms: int = 0,
     max_terms: int = 10_000,
+    max_evaluations: int | None = None,
+    scan: int = SCAN,
 ) -> Expansion:
     """Expand a radial profile in a basis: f(r) = sum_k c_k phi_k(r).
 
@@ -68,6 +72,13 @@ def expand(
         faster for each, as far as axis and breaks allow, and the sum converges at the rim itself.
     max_terms
         With `tol`: the largest number of terms tried.
+
+    max_evaluations
+        The largest number of radii the profile is called for, for an expensive one; 65536 by default. What is not
+        resolved with them is stated by the error estimate.
+    scan
+        How many points the first scan over the radius has: 736 by default, no two of them further apart than 1.6e-3 R,
+        so that no peak as wide as that is missed. Narrower ones need a denser scan, or `breaks`.
 
     Returns
     -------
@@ -112,7 +123,7 @@ def expand(
     lifted = checks.integer("lift_terms", lift_terms, 0, MOST_LIFTED)
     if lifted:
         condition_of(basis)
-    panels, table = _panels(profile, basis, breaks)
+    panels, table = _panels(profile, basis, breaks, max_evaluations, scan)
     norm, part = panels.norm().reshape(-1), None
     if lifted:
         part = closed_part_of(basis, panels, lifted)
@@ -138,17 +149,23 @@ def _tolerance(tol: Any, atol: float) -> float:
     return share
 
 
-def _panels(profile: Any, basis: Basis, breaks: Any) -> tuple[Panels, FloatArray | None]:
+def _panels(
+    profile: Any, basis: Basis, breaks: Any, max_evaluations: Any, scan: Any
+) -> tuple[Panels, FloatArray | None]:
     """Return the profile resolved on the basis' radius, and the L2 error of a table's resolution."""
     radius = float(basis.radius)
     cuts = _as_breaks(breaks, radius)
+    density = checks.integer("scan", scan, FEWEST, MOST_EVALUATIONS)
+    most = max(MOST_EVALUATIONS, 2 * density)
+    if max_evaluations is not None:
+        most = checks.integer("max_evaluations", max_evaluations, (FIRST + FEWEST) * (len(cuts) + 1))
     if isinstance(profile, RadialTable):
         if cuts:
             raise checks.value_error("breaks", "left out where the profile is a table", breaks)
         return place(profile, float(basis.order), radius)
     if not callable(profile):
         raise checks.type_error("profile", "a function of radii or a RadialTable", profile)
-    return resolve(profile, cuts, radius), None
+    return resolve(profile, cuts, radius, scan=density, most=most), None
 
 
 def _as_breaks(breaks: Any, radius: float) -> tuple[float, ...]:

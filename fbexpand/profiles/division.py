@@ -52,9 +52,18 @@ class Piece:
 
 
 def divide(
-    sampler: Sampler, judge: Judge, look: FirstLook, verdict: Verdict, coefficients: Numeric, on_scan: Numeric
+    sampler: Sampler,
+    judge: Judge,
+    look: FirstLook,
+    verdict: Verdict,
+    coefficients: Numeric,
+    on_scan: Numeric,
+    most: int = MOST_EVALUATIONS,
 ) -> list[Piece]:
-    """Return the panels, ascending, that resolve the profile, starting from those of the first look."""
+    """Return the panels, ascending, that resolve the profile, starting from those of the first look.
+
+    Not more than `most` evaluations are made in all; what is unresolved then stays so, and its residual says it.
+    """
     edges = look.edges
     streak = np.zeros(coefficients.shape[0], dtype=np.int64)
     # half the degrees will do from here on: what a piece has beyond them must be noise
@@ -71,10 +80,13 @@ def divide(
     active = [piece for piece in pieces if not piece.smooth.all()]
     while True:
         while active:
-            if sampler.evaluations + 2 * DEGREES * len(active) > MOST_EVALUATIONS:
-                done += [_given_up(piece) for piece in active]
-                active = []
-                break
+            room = max(0, most - sampler.evaluations) // (2 * DEGREES)
+            if room < len(active):  # what weighs most is divided first
+                active.sort(key=lambda piece: float(np.max(piece.level / judge.scale_of())), reverse=True)
+                done += [_given_up(piece) for piece in active[room:]]
+                active = active[:room]
+                if not active:
+                    break
             children = _halves(sampler, judge, active)
             done += [child for child in children if child.smooth.all()]
             rest = [child for child in children if not child.smooth.all()]

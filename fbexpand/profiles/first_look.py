@@ -36,14 +36,14 @@ class FirstLook(ReadOnlyArrays):
 
 
 @lru_cache(maxsize=64)
-def first_look(edges: tuple[float, ...]) -> FirstLook:
-    """Return where to look first between the given edges."""
+def first_look(edges: tuple[float, ...], density: int = SCAN) -> FirstLook:
+    """Return where to look first between the given edges; the scan has about `density` points over the radius."""
     cuts = np.array(edges)
     lengths = np.diff(cuts)
     nodes = panel_nodes(cuts[:-1], cuts[1:], FIRST)
     scans, weights, counts, matrices = [], [], [], []
     for low, length in zip(cuts[:-1], lengths, strict=True):
-        count = max(FEWEST, int(np.ceil(SCAN * length / cuts[-1])))
+        count = max(FEWEST, int(np.ceil(density * length / cuts[-1])))
         share, matrix = _scan(count)
         r = low + length * share
         scans.append(r)

@@ -62,6 +62,10 @@ class Judge:
         smooth = fallen | (flat & (level <= ROUNDING * height))
         return Verdict(smooth, flat, height, level, np.where(fallen, 2.0 * last, 6.0 * level))
 
+    def scale_of(self) -> FloatArray:
+        """Return the largest modulus of every profile, 1 for a profile of zeros."""
+        return np.where(self.scale > 0.0, self.scale, 1.0)
+
     def allowed(self, height: FloatArray, level: FloatArray) -> FloatArray:
         """Return by how much a resolved polynomial may differ from the profile between its points."""
         most = np.maximum(AGREES * height, AGREES_NOISE * level)

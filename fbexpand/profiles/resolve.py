@@ -13,20 +13,31 @@ from typing import Any
 import numpy as np
 
 from fbexpand.profiles import chebyshev
-from fbexpand.profiles.division import divide, level_jumps
-from fbexpand.profiles.first_look import FIRST, first_look
+from fbexpand.profiles.division import MOST_EVALUATIONS, divide, level_jumps
+from fbexpand.profiles.first_look import FIRST, SCAN, first_look
 from fbexpand.profiles.judge import EPS, Judge, Verdict
 from fbexpand.profiles.panels import Panels
 from fbexpand.profiles.sampling import Sampler
 from fbexpand.types import FloatArray, Numeric
 
+SCANNED = 3  # at most one in three of the evaluations allowed goes into the scan
 GRAIN = 16  # few different numbers of degrees, so that profiles share the weights of their integrals
 
 
-def resolve(profile: Callable[..., Any], breaks: tuple[float, ...], radius: float) -> Panels:
-    """Return the panels of a profile that may jump at `breaks` (ascending, inside (0, radius))."""
+def resolve(
+    profile: Callable[..., Any],
+    breaks: tuple[float, ...],
+    radius: float,
+    *,
+    scan: int = SCAN,
+    most: int = MOST_EVALUATIONS,
+) -> Panels:
+    """Return the panels of a profile that may jump at `breaks` (ascending, inside (0, radius)).
+
+    The first scan has about `scan` points; not more than `most` evaluations are made in all.
+    """
     sampler = Sampler(profile)
-    look = first_look((0.0, *breaks, radius))
+    look = first_look((0.0, *breaks, radius), min(scan, (most - FIRST * (len(breaks) + 1)) // SCANNED))
     values = sampler(look.radii)
     edges = look.edges
     split = (edges.size - 1) * FIRST
@@ -40,7 +51,7 @@ def resolve(profile: Callable[..., Any], breaks: tuple[float, ...], radius: floa
         misses = np.maximum.reduceat(np.abs(on_scan - look.on_scan(trimmed)), look.starts, axis=1)
         if (misses <= judge.allowed(verdict.height, verdict.level)).all():
             return _panels(edges, trimmed, verdict.residual, sampler)
-    pieces = divide(sampler, judge, look, verdict, coefficients, on_scan)
+    pieces = divide(sampler, judge, look, verdict, coefficients, on_scan, most)
     level_jumps(pieces)
     return _panels(
         np.array([piece.low for piece in pieces] + [radius]),
@@ -65,6 +76,6 @@ def _panels(edges: FloatArray, coefficients: Numeric, residual: FloatArray, samp
 def _trimmed(coefficients: Numeric, verdict: Verdict) -> Numeric:
     """Leave out degrees that no profile needs, GRAIN at a time: those lost in the rounding of the others."""
     least = np.maximum(verdict.residual / 16.0, EPS * verdict.height)
-    needed = (np.abs(coefficients) > least[..., None]).any(axis=(0, 1))
-    last = needed.size - 1 - int(needed[::-1].argmax()) if needed.any() else 0
+    needed = np.flatnonzero((np.abs(coefficients) > least[..., None]).any(axis=(0, 1)))
+    last = int(needed[-1]) if needed.size else 0
     return np.ascontiguousarray(coefficients[..., : GRAIN * (last // GRAIN + 1)])
