@@ -180,3 +180,33 @@ def test_wrong_types(bad):
 def test_a_basis_of_an_unknown_rim_condition():
     with pytest.raises(ValueError, match="'lift_terms' must be 0 on a basis"):
         expand(np.cos, Sines(), terms=3, lift_terms=1)
+
+
+@pytest.mark.parametrize(
+    ("order", "profile", "breaks", "m", "decay", "why"),
+    [
+        (0.0, lambda r: np.cos(3 * r**2), (), 0, (1.0, 2.0), "rim"),
+        (0.0, lambda r: np.cos(3 * r**2), (), 1, (3.0, 4.0), "rim"),
+        (0.0, lambda r: np.cos(3 * r**2), (), 2, (5.0, 6.0), "rim"),
+        (1.0, lambda r: 1 - r**2, (), 0, (1.5, 1.5), "axis"),
+        (1.0, lambda r: 1 - r**2, (), 2, (1.5, 1.5), "axis"),
+        (0.0, lambda r: 1.0 * (r < 0.5), (0.5,), 1, (1.0, 1.0), "interior"),
+        (0.0, lambda r: np.abs(r - 0.5), (0.5,), 1, (2.0, 2.0), "interior"),
+        (0.3, lambda r: r**0.3 / (2 - r**2), (), 1, (3.0, 4.0), "rim"),
+        (0.0, lambda r: r * (1 + r), (), 3, (2.5, 2.5), "axis"),
+        (0.0, lambda r: 1 + r**2, (), 2, (np.inf, np.inf), "none"),
+    ],
+)
+def test_the_decay_to_expect(order, profile, breaks, m, decay, why):
+    for basis, expected in zip((FourierBessel(order), Dini(order, robin=2.0)), decay, strict=True):
+        e = expand(profile, basis, terms=400, breaks=breaks, lift_terms=m)
+        residual = e.lift_residual
+        assert residual.decay == pytest.approx(expected, abs=0.1)
+        assert residual.limited_by == why
+        k = np.arange(60, 400)
+        b = np.abs(e.orthonormal[k - 1])
+        if (np.isfinite(expected) and b.min() > 1e-13) or why in ("axis", "interior"):
+            heights = [b[i : i + 40].max() for i in range(0, 320, 40)]  # a jump's coefficients go up and down
+            centres = [k[i : i + 40][b[i : i + 40].argmax()] for i in range(0, 320, 40)]
+            assert -np.polyfit(np.log(centres), np.log(heights), 1)[0] == pytest.approx(expected, abs=0.25)
+        assert Expansion(basis, e.coefficients).lift_residual is None

@@ -8,6 +8,7 @@ from typing import TYPE_CHECKING, Any
 import numpy as np
 
 from fbexpand import checks
+from fbexpand.bases import Dini, FourierBessel
 from fbexpand.estimates.cells import cells_of
 from fbexpand.estimates.estimate import estimate, source_of
 from fbexpand.estimates.pointwise import envelope
@@ -15,6 +16,7 @@ from fbexpand.estimates.records import ErrorEstimate, PartialSum
 from fbexpand.estimates.requirement import required_terms
 from fbexpand.expansion.arguments import as_radii
 from fbexpand.expansion.whole import values_of
+from fbexpand.lifting.expected import LiftResidual, lift_residual
 from fbexpand.types import FloatArray
 
 if TYPE_CHECKING:
@@ -80,6 +82,14 @@ def terms_for(series: Expansion, tol: Any, norm: Any, at: Any, relative: Any) ->
     absolute = bool(relative) and series.closed_part is None
     answer = required_terms(series.basis, series._origins, limit * size, kind, place, absolute)
     return answer.reshape(series.batch_shape)[()]
+
+
+def lift_residual_of(series: Expansion) -> LiftResidual | None:
+    """Return what the profile's panels say of rim, axis and interior."""
+    panels = series._origins[0].panels
+    if len(series._origins) != 1 or panels is None or not isinstance(series.basis, (FourierBessel, Dini)):
+        return None
+    return lift_residual(series.basis, panels)
 
 
 def _size(series: Expansion, kind: str) -> FloatArray:

@@ -17,6 +17,7 @@ if TYPE_CHECKING:
     from fbexpand.bases import Basis
     from fbexpand.estimates.records import ErrorEstimate, PartialSum
     from fbexpand.lifting.closed_part import ClosedPart
+    from fbexpand.lifting.expected import LiftResidual
     from fbexpand.profiles.panels import Panels
 
 
@@ -262,6 +263,14 @@ class Expansion:
         kink, the series does not converge: a TruncationWarning says so, and its error estimate is infinite.
         """
         return laplacian.laplacian_of(self)
+
+    @property
+    def lift_residual(self) -> LiftResidual | None:
+        """How the profile (less what was lifted) breaks the rim condition, and the decay of coefficients to expect.
+
+        None for a series made from coefficients alone, a sum of series, or a basis whose rim condition is not known.
+        """
+        return questions.lift_residual_of(self)
 
     # -- errors
     # ------------------------------------------------------------------------------------------------
