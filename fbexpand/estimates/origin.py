@@ -29,6 +29,7 @@ class Origin:
     quadrature: FloatArray
     table: FloatArray
     left: FloatArray | None = None
+    projected: bool = True  # whether the coefficients are those of the profile: a filter damps them
     front: bool = False
 
     @property
@@ -46,6 +47,7 @@ class Origin:
             np.broadcast_to(self.quadrature, shape),
             np.broadcast_to(self.table, shape),
             None if self.left is None else np.broadcast_to(self.left, shape),
+            self.projected,
             self.front,
         )
 
@@ -61,6 +63,7 @@ class Origin:
             pick(self.quadrature, ()),
             pick(self.table, ()),
             None if self.left is None else pick(self.left, ()),
+            self.projected,
             self.front,
         )
 
@@ -82,6 +85,7 @@ class Origin:
             _times(whole.quadrature, size),
             _times(whole.table, size),
             None if whole.left is None else _times(whole.left, size),
+            whole.projected,
             whole.front,
         )
 
@@ -145,6 +149,7 @@ def stacked(origins: list[Origin]) -> Origin:
         np.stack([origin.quadrature for origin in origins]),
         np.stack([origin.table for origin in origins]),
         _stacked_left([origin.left for origin in origins]),
+        all(origin.projected for origin in origins),
         any(origin.front for origin in origins),
     )
 

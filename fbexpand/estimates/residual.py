@@ -82,9 +82,12 @@ def measure(basis: Basis, origin: Origin, cuts: Sequence[int], *, want_sup: bool
     r = cells.radii()
     weights = cells.weights()
     many = want_sup and len(set(cuts)) > MANY  # then the terms are taken away one by one
-    ends = sorted({*cuts, terms}) if want_sup and not many else [terms]
+    if not origin.projected:
+        many = False
+    ends = sorted({*cuts, terms}) if (want_sup and not many) or not origin.projected else [terms]
     polynomials = panels.coefficients.reshape(size, *panels.coefficients.shape[-2:])
     last = np.zeros(size)
+    direct = np.zeros((len(ends), size))
     sup = np.zeros((len(cuts) if many else len(ends), size))
     rounding, rounding_l2 = np.zeros(size), np.zeros(size)
     step = max(1, BLOCK // (r.size * (len(ends) + 2)))
@@ -100,6 +103,8 @@ def measure(basis: Basis, origin: Origin, cuts: Sequence[int], *, want_sup: bool
         else:
             sup[:, batch] = largest
         last[batch] = _norm(difference[-1], largest[-1], weights)
+        if not origin.projected:
+            direct[:, batch] = [_norm(d, h, weights) for d, h in zip(difference, largest, strict=True)]
         of_sums = rounding_of(basis, coefficients[batch], r.ravel())
         heights = np.abs(target).max(axis=(-2, -1))
         rounding[batch] = np.maximum(of_sums, ROUNDING * heights)
@@ -112,6 +117,9 @@ def measure(basis: Basis, origin: Origin, cuts: Sequence[int], *, want_sup: bool
         exact = by_parseval(basis, coefficients, panels.norm().reshape(-1))
         last = np.where(exact > 0.0, exact, last)
     places = list(range(len(cuts))) if many else [ends.index(cut) for cut in cuts] if want_sup else []
+    if not origin.projected:
+        direct *= SAMPLED_MARGIN_L2 if cells.sampled else MARGIN_L2
+        return Measured(direct[[ends.index(cut) for cut in cuts]], sup[places], rounding, rounding_l2)
     return Measured(
         root_of_squares(tails(basis, coefficients, cuts), last), sup[places], rounding, rounding_l2
     )
