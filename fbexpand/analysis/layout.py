@@ -2,8 +2,10 @@
 
 from __future__ import annotations
 
+import math
 from collections.abc import Iterator
 from dataclasses import dataclass
+from functools import lru_cache
 from typing import NamedTuple
 
 import numpy as np
@@ -11,6 +13,8 @@ import numpy as np
 from fbexpand.analysis.rules import MOST_NODES, Rule, composite_rule, sizes
 from fbexpand.records import ReadOnlyArrays
 from fbexpand.types import FloatArray, IntArray
+
+KEPT_REACH = 4096.0  # of roots: layouts of one panel up to there are kept
 
 
 class Group(NamedTuple):
@@ -72,10 +76,22 @@ def lay_out(edges: FloatArray, degrees: int, order: float, root: float) -> Layou
 
     A mode of order nu varies as r^nu where its root is below nu, which takes no finer nodes than a root of nu.
     """
+    reach = max(root, order)
+    if edges.size == 2 and reach <= KEPT_REACH:
+        return _one_panel(float(edges[1]), degrees, order % 1.0, math.ceil(reach))
+    return _lay_out(edges, degrees, order % 1.0, reach)
+
+
+@lru_cache(maxsize=32)
+def _one_panel(radius: float, degrees: int, fraction: float, reach: int) -> Layout:
+    """Return the layout of one panel: bases whose roots reach about as far share it."""
+    return _lay_out(np.array([0.0, radius]), degrees, fraction, float(reach))
+
+
+def _lay_out(edges: FloatArray, degrees: int, fraction: float, reach: float) -> Layout:
     low, high = edges[:-1], edges[1:]
     width = high - low
-    fraction = order % 1.0
-    stretches, counts = sizes(0.5 * max(root, order) * width / edges[-1], degrees, low / high, fraction)
+    stretches, counts = sizes(0.5 * reach * width / edges[-1], degrees, low / high, fraction)
     kinds = stretches * (2 * MOST_NODES) + counts
     if fraction:
         kinds[0] = -kinds[0]  # the panel at the axis has weights of its own

@@ -13,7 +13,7 @@ import math
 import numpy as np
 
 from fbexpand.kernels.bessel_eval import j_pairs, j_values
-from fbexpand.kernels.bessel_table import LOG_C, LOG_C_LOW
+from fbexpand.kernels.bessel_table import LOG_C, LOG_C_LOW, X0, X_PHASE
 from fbexpand.kernels.dd import fma, two_sum
 from fbexpand.kernels.first_mode import (
     SERIES_TERMS,
@@ -25,12 +25,13 @@ from fbexpand.kernels.first_mode import (
 from fbexpand.kernels.jit import callee, inline_kernel, kernel
 from fbexpand.kernels.memory import address, load
 from fbexpand.kernels.power import power_factor
-from fbexpand.types import FloatArray
+from fbexpand.types import FloatArray, IntArray
 
 TAYLOR_TERMS = 26  # about the turning point, where the coefficients fall as (j!)^(-2/3)
 FAR_TERMS = 20  # far beyond it, where they do as 1/j!
 MAX_DERIVATIVE = 12
 _INVERSE = np.array([1.0 / ((j + 1) * (j + 2)) for j in range(TAYLOR_TERMS + MAX_DERIVATIVE)])
+CHUNK = 2048  # points evaluated in one go
 _DEEPEST = 0.2  # of the radius: the Taylor series about lambda converges for d < 1
 
 
@@ -94,6 +95,71 @@ def by_recurrence(nu: float, n: int, z: float, value: float, slope: float) -> fl
     return slope
 
 
+@inline_kernel
+def first_beyond(hi: FloatArray, x: float, limit: float) -> int:
+    """Return the first k with lambda_k x >= limit; lambda ascends, but for the first."""
+    low, high = int(np.int64(0)), hi.size
+    while low < high:
+        middle = (low + high) >> 1
+        if hi[middle] * x >= limit:
+            high = middle
+        else:
+            low = middle + 1
+    return low
+
+
+@inline_kernel
+def products(hi: FloatArray, lo: FloatArray, x: float, xl: float, z: FloatArray, zl: FloatArray) -> None:
+    """Fill z + zl = (hi + lo)(x + xl)."""
+    for j in range(z.size):
+        p = hi[j] * x
+        z[j] = p
+        zl[j] = fma(hi[j], x, -p) + fma(hi[j], xl, lo[j] * x)
+
+
+@inline_kernel
+def scaled(values: FloatArray, scale: FloatArray, out: FloatArray) -> None:
+    """Fill out with values times scale."""
+    for j in range(out.size):
+        out[j] = values[j] * scale[j]
+
+
+@callee
+def evaluate_pieces(
+    data: FloatArray,
+    nu: float,
+    n: int,
+    z: FloatArray,
+    zl: FloatArray,
+    work: FloatArray,
+    series: FloatArray,
+    first: int,
+    pieces: IntArray,
+    scale: FloatArray,
+    out: FloatArray,
+) -> None:
+    """Write the n-th derivative of J_nu at z + zl, scaled, into the pieces of `out`: (begin, size) pairs."""
+    target = work[0, : z.size]
+    if n == 0:
+        j_values(data, z, zl, target)
+    else:
+        value = work[1, : z.size]
+        j_pairs(data, z, zl, value, target)
+        if n > 1:
+            where = address(data)
+            for j in range(z.size):
+                if z[j] < 1.5 or (z[j] < 25.0 and z[j] * z[j] < 2.0 * (nu + 1.0)):
+                    target[j] = near_axis(where, nu, n, z[j], zl[j], series, first)
+                else:
+                    target[j] = by_recurrence(nu, n, z[j], value[j], target[j])
+    done = 0
+    for p in range(pieces.shape[0]):
+        begin, size = pieces[p]
+        column = begin % scale.size
+        scaled(target[done : done + size], scale[column : column + size], out[begin : begin + size])
+        done += size
+
+
 @kernel
 def plain_modes(
     data: FloatArray,
@@ -106,40 +172,38 @@ def plain_modes(
     xl: FloatArray,
     out: FloatArray,
 ) -> None:
-    """out[i count + k] = scale[k] J_nu^(n)(lambda_k x_i), in blocks of rows that make long vectors."""
+    """out[i count + k] = scale[k] J_nu^(n)(lambda_k x_i).
+
+    Rows are cut where lambda_k x_i passes from one region of the table of J_nu to the next, and the pieces that lie
+    in one region are strung together into long vectors.
+    """
     count = hi.size
-    rows = max(1, min(2048 // count, x.size))
-    z = np.empty(rows * count)
-    zl = np.empty(rows * count)
-    value = np.empty(rows * count if n > 0 else 0)
-    a = np.zeros(SERIES_TERMS)
-    first = power_series(nu, n, a) if n > 1 else 0
-    where = address(data)
-    scaled = False
-    for k in range(count):
-        scaled |= scale[k] != 1.0
-    for low in range(0, x.size, rows):
-        here = min(rows, x.size - low)
-        size = here * count
-        for i in range(here):
-            for k in range(count):
-                p = hi[k] * x[low + i]
-                z[i * count + k] = p
-                zl[i * count + k] = fma(hi[k], x[low + i], -p) + fma(hi[k], xl[low + i], lo[k] * x[low + i])
-        target = out[low * count : low * count + size]
-        if n == 0:
-            j_values(data, z[:size], zl[:size], target)
-        else:
-            j_pairs(data, z[:size], zl[:size], value[:size], target)
-        if n > 1:
-            for j in range(size):
-                if z[j] < 1.5 or (z[j] < 25.0 and z[j] * z[j] < 2.0 * (nu + 1.0)):
-                    target[j] = near_axis(where, nu, n, z[j], zl[j], a, first)
-                else:
-                    target[j] = by_recurrence(nu, n, z[j], value[j], target[j])
-        for i in range(here if scaled else 0):
-            for k in range(count):
-                target[i * count + k] *= scale[k]
+    room = max(1, min(CHUNK, x.size * count))
+    z = np.empty(room)
+    zl = np.empty(room)
+    work = np.empty((2, room))
+    pieces = np.empty((room, 2), np.int64)
+    series = np.zeros(SERIES_TERMS)
+    first = power_series(nu, n, series) if n > 1 else 0
+    for region in range(3):
+        filled, last = 0, 0
+        for i in range(x.size):
+            k, stop = 0, count
+            if region > 0:
+                k = first_beyond(hi, x[i], data[X0] if region == 1 else data[X_PHASE])
+            if region < 2:
+                stop = first_beyond(hi, x[i], data[X0] if region == 0 else data[X_PHASE])
+            while k < stop:
+                here = min(stop - k, room - filled)
+                end, after = filled + here, k + here
+                products(hi[k:after], lo[k:after], x[i], xl[i], z[filled:end], zl[filled:end])
+                pieces[last, 0], pieces[last, 1] = i * count + k, here
+                k, filled, last = after, end, last + 1
+                if filled == room:
+                    evaluate_pieces(data, nu, n, z, zl, work, series, first, pieces[:last], scale, out)
+                    filled, last = 0, 0
+        if filled > 0:
+            evaluate_pieces(data, nu, n, z[:filled], zl[:filled], work, series, first, pieces[:last], scale, out)
 
 
 @kernel
