@@ -20,7 +20,7 @@ LAYERS = (
     ("bases", "profiles"),
     ("transform.direct", "transform"),  # direct sums of modes
     ("estimates",),
-    ("lifting",),
+    ("lifting", "analysis.growing", "analysis.layout", "analysis.quadrature", "analysis.rules"),
     ("expansion",),
     ("analysis",),
     ("crosscheck", "warm_up"),

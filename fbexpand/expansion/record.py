@@ -2,7 +2,7 @@
 
 from __future__ import annotations
 
-from collections.abc import Iterator, Sequence
+from collections.abc import Callable, Iterator, Sequence
 from dataclasses import dataclass, field
 from typing import TYPE_CHECKING, Any
 
@@ -10,7 +10,7 @@ import numpy as np
 
 from fbexpand import checks
 from fbexpand.estimates.origin import Origin, spread_panels
-from fbexpand.expansion import arguments, arithmetic, filters, laplacian, questions, text, whole
+from fbexpand.expansion import arguments, arithmetic, filters, laplacian, mapping, questions, text, whole
 from fbexpand.types import ArrayLike, FloatArray, Numeric
 
 if TYPE_CHECKING:
@@ -270,6 +270,23 @@ class Expansion:
         [0.0114  0.00248] [0. 0.]
         """
         return filters.filtered(self, name)
+
+    def map(self, function: Callable[[Numeric], Any], terms: int) -> Expansion:
+        """Return the series, of `terms` terms, of a pointwise function of the field: function(f(r)).
+
+        `function` takes values `(*batch, m)` and returns as many, real or complex. It is resolved as it needs to be,
+        so that nothing is aliased. In the error estimate of the result the truncation is measured against function(S);
+        what the error of S itself changes there is the part `quadrature`.
+
+        Raises TypeError for what cannot be called, ValueError for a result of another shape, or not finite.
+
+        >>> from fbexpand import Dini, expand
+        >>> e = expand(lambda r: 1 - r**2 / 2, Dini(robin=2.0), terms=40)
+        >>> square = e.map(lambda f: f**2, 40)
+        >>> print(square(0.5).round(4), (e(0.5) ** 2).round(4))
+        0.7657 0.7656
+        """
+        return mapping.mapped(self, function, terms)
 
     def laplacian(self) -> Expansion:
         """Return the series of lap f = f'' + f'/r - nu^2 f/r^2: coefficients -eigenvalue_k c_k.
