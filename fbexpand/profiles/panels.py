@@ -3,12 +3,13 @@
 from __future__ import annotations
 
 from dataclasses import dataclass
+from functools import lru_cache
 
 import numpy as np
 from numpy.polynomial import legendre
 
 from fbexpand.profiles import chebyshev
-from fbexpand.records import ReadOnlyArrays
+from fbexpand.records import ReadOnlyArrays, read_only
 from fbexpand.types import ArrayLike, FloatArray, IntArray, Numeric
 
 POINTS_AT_ONCE = 1 << 20  # numbers held at once while evaluating
@@ -58,14 +59,23 @@ class Panels(ReadOnlyArrays):
     def norm(self) -> FloatArray:
         """Return sqrt(integral |f|^2 r dr), shape (*batch,)."""
         rows = self.rows()
-        x, w = legendre.leggauss(self.degrees + 1)
-        half = 0.5 * np.diff(self.edges)[:, None]
-        weights = half * w * (self.edges[:-1, None] + half * (x + 1.0))  # (P, nodes)
-        values = np.abs(rows @ chebyshev.evaluation(x, self.degrees))
-        unit = values.max(axis=(1, 2), initial=0.0)
-        unit = np.where(unit > 0.0, unit, 1.0)
-        square = np.einsum("spi,pi->s", (values / unit[:, None, None]) ** 2, weights)
-        return np.asarray(unit * np.sqrt(square)).reshape(self.batch_shape)
+        x, w, evaluation = _square_rule(self.degrees)
+        low, high = self.edges[:-1, None], self.edges[1:, None]
+        half = 0.5 * (high - low)
+        weights = half * w * (low + half * (x + 1.0))  # (P, nodes)
+        values = np.abs(rows @ evaluation).reshape(rows.shape[0], -1)
+        unit = values.max(axis=1, initial=0.0)
+        unit[unit == 0.0] = 1.0
+        values /= unit[:, None]
+        values *= values
+        return np.asarray(unit * np.sqrt(values @ weights.ravel())).reshape(self.batch_shape)
+
+
+@lru_cache(maxsize=16)
+def _square_rule(degrees: int) -> tuple[FloatArray, FloatArray, FloatArray]:
+    """Return nodes and weights that integrate squares times r, and the matrix from coefficients to the nodes."""
+    x, w = legendre.leggauss(degrees + 1)
+    return read_only(x), read_only(w), read_only(chebyshev.evaluation(x, degrees))
 
 
 def _clenshaw(rows: Numeric, panel: IntArray, t: FloatArray) -> Numeric:
