@@ -23,7 +23,7 @@ LAYERS = (
     ("lifting", "analysis.growing", "analysis.layout", "analysis.quadrature", "analysis.rules"),
     ("expansion",),
     ("analysis",),
-    ("crosscheck", "warm_up"),
+    ("crosscheck", "evolution", "warm_up"),
     ("command",),
     ("__init__", "__main__"),
 )
