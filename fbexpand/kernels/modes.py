@@ -1,10 +1,4 @@
-"""The matrix of modes J_nu(lambda_k x) and their derivatives: arguments in two parts, zeros at the rim kept.
-
-Where the rim condition makes all modes (or their slopes) small near x = 1, an error of an eps of the modulus
-of J_nu is a large part of them. There J_nu(lambda (1 - d)) is summed as a Taylor series about lambda, whose
-first two coefficients the condition fixes to a few eps of themselves; the others follow from Bessel's
-equation.
-"""
+"""The matrix of modes J_nu(lambda_k x) and their derivatives: arguments in two parts, zeros at the rim kept."""
 
 from __future__ import annotations
 
@@ -25,42 +19,12 @@ from fbexpand.kernels.first_mode import (
 from fbexpand.kernels.jit import callee, inline_kernel, kernel
 from fbexpand.kernels.memory import address, load
 from fbexpand.kernels.power import power_factor
+from fbexpand.kernels.rim import DEEPEST, rim_columns, wave_number
 from fbexpand.types import FloatArray, IntArray
 
-TAYLOR_TERMS = 26  # about the turning point, where the coefficients fall as (j!)^(-2/3)
-FAR_TERMS = 20  # far beyond it, where they do as 1/j!
 MAX_DERIVATIVE = 12
-_INVERSE = np.array([1.0 / ((j + 1) * (j + 2)) for j in range(TAYLOR_TERMS + MAX_DERIVATIVE)])
+COLUMNS = 128  # series about the rim summed side by side
 CHUNK = 2048  # points evaluated in one go
-_DEEPEST = 0.2  # of the radius: the Taylor series about lambda converges for d < 1
-
-
-@inline_kernel
-def wave_number(nu: float, x: float) -> float:
-    """Return about M'/M, how fast J_nu turns at x >= nu: 1 far out, nu^(-1/3) at the turning point."""
-    return math.sqrt(abs((x - nu) * (x + nu)) / (x * x) + 1.5 * (1.0 + nu) ** (-2.0 / 3.0))
-
-
-@callee
-def rim_series(nu: float, robin: float, c: float, h: float, value: float, slope: float, t: FloatArray) -> None:
-    """Fill `t` with t_j h^j, J_nu(c + z) = sum t_j z^j; value and slope are t_0 and t_1.
-
-    c^2 (j+2)(j+1) t_{j+2} + c (j+1)(2j+1) t_{j+1} + (j^2 + c^2 - nu^2) t_j + 2 c t_{j-1} + t_{j-2} = 0.
-    """
-    b = h / c
-    b2 = b * b
-    q = (c - nu) * (c + nu)
-    h2 = h * h
-    t[0] = value
-    t[1] = slope * h
-    older, old = 0.0, 0.0
-    for j in range(t.size - 2):
-        s = (j + 1.0) * (2.0 * j + 1.0) * b * t[j + 1] + (j * j + q) * b2 * t[j] + h2 * b * (2.0 * old + b * older)
-        older, old = old, t[j]
-        t[j + 2] = -s * _INVERSE[j]
-        if j == 1 and abs(robin) < c:  # the same from c J' + robin J = 0, free of cancellation near robin = -1
-            s = (1.0 + robin) * h2 - (robin * (2.0 + nu * nu) + 3.0 * nu * nu) * b2
-            t[3] = value * b * s / 6.0
 
 
 @callee
@@ -228,34 +192,23 @@ def rim_modes(
     near = np.empty(d.size, np.int64)
     nears = 0
     for i in range(d.size):
-        if d[i] <= _DEEPEST:
+        if d[i] <= DEEPEST:
             near[nears] = i
             nears += 1
-    t = np.empty(TAYLOR_TERMS + MAX_DERIVATIVE)
+    columns = np.empty(count, np.int64)
+    small = 0
     for k in range(skip, count if nears > 0 else 0):
-        c = hi[k]
-        turn = wave_number(nu, c)
+        turn = wave_number(nu, hi[k])
         if n == 0:
             wanted = abs(value[k]) * turn < 0.5 * abs(slope[k])
         else:
             wanted = n > 1 or abs(slope[k]) < 0.5 * abs(value[k]) * turn
         if wanted:
-            reach = min(1.0 / (turn * c), _DEEPEST)  # the d below which the series serves
-            h = reach * c
-            terms = FAR_TERMS if c > 2.0 * nu + 10.0 else TAYLOR_TERMS
-            rim_series(nu, robin, c, h, value[k], slope[k], t[: terms + n])
-            for j in range(terms):
-                f = t[j + n]
-                for m in range(n):
-                    f *= (j + n - m) / h
-                t[j] = f * scale[k]
-            for i in near[:nears]:
-                if d[i] <= reach:
-                    v = -(d[i] + dl[i]) / reach
-                    s = t[terms - 1]
-                    for j in range(terms - 2, -1, -1):
-                        s = fma(s, v, t[j])
-                    out[i * count + k] = s
+            columns[small] = k
+            small += 1
+    for low in range(0, small, COLUMNS):
+        chosen = columns[low : min(low + COLUMNS, small)]
+        rim_columns(nu, robin, n, hi, value, slope, scale, d, dl, near[:nears], chosen, out)
 
 
 @kernel
