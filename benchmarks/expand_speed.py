@@ -38,7 +38,7 @@ def scalar_profile(r: float) -> float:
 
 def exact(order: float, terms: int) -> tuple[np.ndarray, np.ndarray, np.ndarray]:
     """Return zeros, norms and coefficients by ball arithmetic."""
-    ctx.prec = 100
+    ctx.prec = 640  # the series of 0F1 cancels by exp(312)
     nu = arb(order)
     roots, norms, coefficients = [], [], []
     near = FourierBessel(order).roots(terms)
@@ -50,18 +50,21 @@ def exact(order: float, terms: int) -> tuple[np.ndarray, np.ndarray, np.ndarray]
         assert (left.bessel_j(nu) < 0) != (right.bessel_j(nu) < 0)
         norm = x.bessel_j(nu + 1) ** 2 / 2
 
-        def integrand(z: acb, analytic: bool, x: arb = x) -> acb:
-            if analytic and order % 1.0 and not z.real > 0:  # the cut of a power
-                return acb("nan")
-            return (-4 * z * z).exp() * (1 + z * z) * z * (acb(x) * z).bessel_j(acb(nu))
+        # r = u^10 and J_nu(x r) = (x r / 2)^nu / Gamma(nu + 1) 0F1: entire in u where 10 nu is a whole number
+        power = round(10 * order)
+        factor = (x / 2) ** nu / (nu + 1).gamma()
 
-        # order 0.3 has a branch point at 0: the piece next to it is below 1e-30 in size
-        pieces = [0] + [arb(10) ** -e for e in range(13, 0, -1)] + [1] if order % 1.0 else [0, 1]
+        def integrand(u: acb, analytic: bool, x: arb = x, power: int = power) -> acb:
+            r = u**10
+            inner = (-((acb(x) * r / 2) ** 2)).hypgeom_0f1(acb(nu + 1))
+            return (-4 * r * r).exp() * (1 + r * r) * inner * 10 * u ** (power + 19)
+
         total = acb(0)
-        for a, b in pairwise(pieces):
-            if a == 0 and order % 1.0:
-                continue
-            total += acb.integral(integrand, acb(a), acb(b), rel_tol=2.0**-75, abs_tol=2.0**-75)
+        for low, high in pairwise(((np.arange(33.0) / 32.0) ** 0.1).tolist()):
+            total += acb.integral(integrand, acb(low), acb(high), rel_tol=2.0**-75, abs_tol=2.0**-75, eval_limit=10**6)
+        total = total * factor
+        if not float(total.real.rad()) < 1e-19:
+            raise ArithmeticError(f"the integral of coefficient {len(roots) + 1} is not known to 1e-19")
         roots.append(float(x))
         norms.append(float(norm.mid()))
         coefficients.append(float((total.real / norm).mid()))
