@@ -8,6 +8,13 @@ from fbexpand.bases import FourierBessel as FourierBessel
 from fbexpand.crosscheck import CrossCheck as CrossCheck
 from fbexpand.crosscheck import crosscheck as crosscheck
 from fbexpand.estimates.records import ErrorEstimate as ErrorEstimate
+from fbexpand.evolution import Diffusion as Diffusion
+from fbexpand.evolution import Evolution as Evolution
+from fbexpand.evolution import ModalLaw as ModalLaw
+from fbexpand.evolution import Paraxial as Paraxial
+from fbexpand.evolution import Wave as Wave
+from fbexpand.evolution import evolve as evolve
+from fbexpand.evolution import solve_steady as solve_steady
 from fbexpand.exceptions import TruncationWarning as TruncationWarning
 from fbexpand.exceptions import UnreachableError as UnreachableError
 from fbexpand.expansion import Expansion as Expansion
@@ -20,4 +27,5 @@ from fbexpand.special.compiled import compiled_bessel_j as compiled_bessel_j
 from fbexpand.special.roots import bessel_zeros as bessel_zeros
 from fbexpand.special.roots import dini_roots as dini_roots
 from fbexpand.special.sequence import bessel_j_sequence as bessel_j_sequence
+from fbexpand.transform import Transform as Transform
 from fbexpand.warm_up import warm_up as warm_up
