@@ -204,7 +204,18 @@ def test_few_coefficients_have_no_law_but_an_estimate():
 def test_coefficients_that_do_not_fall_have_no_finite_error():
     basis = FourierBessel(0.0)
     e = Expansion(basis, 1.0 / np.sqrt(basis.norms(50)))
-    assert e.error_estimate().l2 == np.inf
+    found = e.error_estimate()
+    assert found.l2 == np.inf
+    assert found.sup == np.inf
+    assert np.all(e.partial_sum([0.0, 0.3, 0.9]).error == np.inf)
+
+
+def test_the_sup_alone_is_no_smaller_than_the_l2_error_allows():
+    """Coefficients that still rise at order 20: the last of them show a thousandth of what is left."""
+    basis = FourierBessel(20.0)
+    b = np.exp(0.4 * np.arange(12))
+    found = Expansion(basis, b / np.sqrt(basis.norms(12))).error_estimate([6, 12])
+    assert np.all(found.sup >= np.sqrt(2.0) * found.l2)
 
 
 def test_estimates_do_not_overflow():

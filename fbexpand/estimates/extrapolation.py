@@ -72,6 +72,7 @@ def extrapolate(basis: Basis, origin: Origin, cuts: Sequence[int], *, want_sup: 
     ends = sorted(block_ends(terms) if many else {*cuts, *block_ends(terms)})
     values = from_rows(sums(basis, as_rows(coefficients), r, cuts=ends), coefficients)
     beyond = sup_beyond(basis, decay, blocks_of(values, ends, terms))
+    beyond = np.maximum(beyond, left / reach_of(basis))  # no field of that L2 norm is smaller everywhere
     if many:
         nothing = np.zeros((coefficients.shape[0], r.size), dtype=coefficients.dtype)
         within = largest_errors(basis, coefficients, r, nothing)[np.asarray(cuts) - 1]

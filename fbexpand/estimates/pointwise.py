@@ -36,7 +36,7 @@ def envelope(basis: Basis, origin: Origin, terms: int, r: FloatArray) -> FloatAr
     r = np.minimum(r, basis.radius)
     rounding = ROUNDING * sums(basis, np.abs(coefficients[:, :used]), r, absolute=True)
     if origin.panels is None:
-        return rounding + _by_law(basis, coefficients, used, r)
+        return rounding + _by_law(basis, coefficients, used, r, origin.left)
     return rounding + _measured(basis, origin, coefficients[:, :used], r)
 
 
@@ -96,7 +96,9 @@ def _measured(basis: Basis, origin: Origin, used: Numeric, r: FloatArray) -> Flo
     return SUP_MARGIN * windowed(basis, used.shape[1], r, panels.edges[1:-1], moduli, finest)
 
 
-def _by_law(basis: Basis, coefficients: Numeric, used: int, r: FloatArray) -> FloatArray:
+def _by_law(
+    basis: Basis, coefficients: Numeric, used: int, r: FloatArray, left: FloatArray | None
+) -> FloatArray:
     """Return the envelope by the decay of the coefficients, shape (size, m).
 
     The terms beyond those at hand are spread over the radius as the last half (or quarter) of the terms is.
@@ -112,6 +114,8 @@ def _by_law(basis: Basis, coefficients: Numeric, used: int, r: FloatArray) -> Fl
     coarse = cells_of(basis, np.array([0.0, float(basis.radius)]), terms, COARSE).radii().ravel()
     blocks = blocks_of(partial(coarse), ends, terms)
     beyond = sup_beyond(basis, decay, blocks)
+    if left is None:
+        beyond = np.where(np.isinf(decay.tail(terms)), np.inf, beyond)
     whole = np.where(decay.flattened, blocks.last_quarter.max(axis=-1), blocks.last_half.max(axis=-1))
     with np.errstate(divide="ignore", invalid="ignore"):
         share = np.nan_to_num(beyond / whole, nan=0.0, posinf=0.0)
