@@ -124,13 +124,15 @@ def expand(
     if lifted:
         condition_of(basis)
     panels, table = _panels(profile, basis, breaks, max_evaluations, scan)
-    norm, part = panels.norm().reshape(-1), None
+    # a tolerance is relative to the profile, not to what is left of it
+    limits = np.maximum(share * panels.norm().reshape(-1), limit) if terms is None else np.zeros(0)
+    part = None
     if lifted:
         part = closed_part_of(basis, panels, lifted)
         panels = remainder(panels, part)
     size = int(np.prod(panels.batch_shape))
     if terms is None:
-        return series_to_tolerance(panels, basis, np.maximum(share * norm, limit), most, table, part)
+        return series_to_tolerance(panels, basis, limits, most, table, part)
     checks.storable("terms", terms, BYTES_PER_COEFFICIENT * terms * (size + 1))
     coefficients = coefficients_of(panels, basis, terms)
     return Expansion._make(
