@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 from dataclasses import dataclass
+from itertools import pairwise
 
 import numpy as np
 
@@ -16,6 +17,7 @@ MOST_EVALUATIONS = 1 << 16  # then what is left unresolved stays so, and the res
 NARROWEST = 8.0  # units in the last place: a panel of this width is not divided
 DEEPEST = 1e-60  # of the radius: nor is one that lies this close to the axis
 GRADE = 0.25  # of a panel beside an end where f is not smooth: what is left to divide again
+RUNGS = 3  # times that it is divided so with one call of the profile
 PERSISTENT = 2  # halvings that a plateau survives in both halves: then it is noise
 UNRESOLVED = float(DEGREES)  # times the last coefficients: the error of a panel given up, a jump's height say
 
@@ -34,7 +36,7 @@ class Piece:
     streak: IntArray
     at_low: bool  # the panel begins at the axis or a break
     at_high: bool  # the panel ends at a break or the rim
-    graded: bool = False  # its sibling was smooth: whatever is wrong is at the end that it touches
+    graded: bool = False  # its siblings were smooth: whatever is wrong is at the end that it touches
     checked: bool = False
     narrowest: float = 0.0  # a panel of this width is not divided
 
@@ -43,12 +45,21 @@ class Piece:
         """Whether the panel is too narrow to be divided."""
         return self.high - self.low <= max(NARROWEST * float(np.spacing(self.high)), self.narrowest)
 
-    def cut(self) -> float:
-        """Return where to divide."""
-        share = 0.5
-        if self.graded and self.at_low != self.at_high:
-            share = GRADE if self.at_low else 1.0 - GRADE
-        return self.low + share * (self.high - self.low)
+    def cuts(self, rungs: int) -> list[float]:
+        """Return where to divide, ascending: in the middle, or `rungs` times toward an end where f is not smooth."""
+        width = self.high - self.low
+        if not self.graded or self.at_low == self.at_high:
+            return [self.low + 0.5 * width]
+        if self.at_low:
+            shares = [GRADE**i for i in range(rungs, 0, -1)]
+        else:
+            shares = [1.0 - GRADE**i for i in range(1, rungs + 1)]
+        cuts = [self.low + share * width for share in shares]
+        ends = [self.low, *cuts, self.high]
+        least = NARROWEST * float(np.spacing(self.high))
+        if min(b - a for a, b in pairwise(ends)) <= max(least, self.narrowest):  # down to there, one at a time
+            return [cuts[-1] if self.at_low else cuts[0]]
+        return cuts
 
 
 def divide(
@@ -87,7 +98,8 @@ def divide(
                 active = active[:room]
                 if not active:
                     break
-            children = _halves(sampler, judge, active)
+            rungs = RUNGS if (RUNGS + 1) * len(active) * DEGREES <= most - sampler.evaluations else 1
+            children = _divided(sampler, judge, active, rungs)
             done += [child for child in children if child.smooth.all()]
             rest = [child for child in children if not child.smooth.all()]
             done += [_given_up(child) for child in rest if child.narrow]
@@ -123,34 +135,40 @@ def _piece(
     )
 
 
-def _halves(sampler: Sampler, judge: Judge, active: list[Piece]) -> list[Piece]:
-    """Divide every panel in two, with one call of the profile."""
-    cuts = [piece.cut() for piece in active]
-    low = np.array([end for piece, cut in zip(active, cuts, strict=True) for end in (piece.low, cut)])
-    high = np.array([end for piece, cut in zip(active, cuts, strict=True) for end in (cut, piece.high)])
+def _divided(sampler: Sampler, judge: Judge, active: list[Piece], rungs: int) -> list[Piece]:
+    """Divide every panel, one that shrinks toward an end `rungs` times, with one call of the profile."""
+    edges = [[piece.low, *piece.cuts(rungs), piece.high] for piece in active]
+    low = np.array([end for piece in edges for end in piece[:-1]])
+    high = np.array([end for piece in edges for end in piece[1:]])
     radii = panel_nodes(low, high, DEGREES)
     nodes = sampler(radii.ravel()).reshape(-1, *radii.shape)
     coefficients = nodes @ chebyshev.transform(DEGREES)
     verdict = judge.verdict(low, high, nodes, coefficients)
-    height = np.repeat(np.stack([piece.height for piece in active], axis=1), 2, axis=1)
-    level = np.repeat(np.stack([piece.level for piece in active], axis=1), 2, axis=1)
+    parent = np.repeat(np.arange(len(active)), [len(piece) - 1 for piece in edges])
+    height = np.stack([piece.height for piece in active], axis=1)[:, parent]
+    level = np.stack([piece.level for piece in active], axis=1)[:, parent]
     noise = judge.noise(verdict, height, level)
     children = []
-    for i, piece in enumerate(active):
-        both = noise[:, 2 * i] & noise[:, 2 * i + 1]
-        streak = np.where(both, piece.streak + 1, 0)
-        pair = [
+    start = 0
+    for piece, ends in zip(active, edges, strict=True):
+        stop = start + len(ends) - 1
+        streak = np.where(noise[:, start:stop].all(axis=1), piece.streak + 1, 0)
+        own = [
             _piece(
                 float(low[p]), float(high[p]), coefficients[:, p], verdict, p, streak,
-                (piece.at_low and p == 2 * i, piece.at_high and p == 2 * i + 1),
+                (piece.at_low and p == start, piece.at_high and p == stop - 1),
             )
-            for p in (2 * i, 2 * i + 1)
+            for p in range(start, stop)
         ]  # fmt: skip
-        for child in pair:
+        for child in own:
             child.smooth = child.smooth | (streak >= PERSISTENT)
             child.narrowest = piece.narrowest
-        pair[0].graded, pair[1].graded = bool(pair[1].smooth.all()), bool(pair[0].smooth.all())
-        children += pair
+        rough = [child for child in own if not child.smooth.all()]
+        if len(rough) < 2:
+            for child in rough or own:
+                child.graded = True
+        children += own
+        start = stop
     return children
 
 

@@ -13,6 +13,7 @@ from fbexpand.types import FloatArray, Numeric
 BoolArray = np.ndarray[tuple[int, ...], np.dtype[np.bool_]]
 
 EPS = float(np.finfo(np.float64).eps)
+LAST_EIGHTHS = np.array([0, 8, 12])  # of sixteen coefficients: where eight, four and the last four begin
 TAIL = 2.0 * EPS  # of the profile on the panel: coefficients that have fallen this far are at rounding
 SHARE = 1e-15  # of the profile's L2 norm: what one panel may lack
 FLAT = 0.2  # coefficients that fall less than this over eight degrees have reached their noise
@@ -40,23 +41,22 @@ class Judge:
 
     def __init__(self, scale: FloatArray, on_scan: Numeric, look: FirstLook) -> None:
         self.scale = scale
-        unit = np.where(scale > 0.0, scale, 1.0)
-        parts = np.abs(on_scan) / unit[:, None]
-        parts *= parts
+        squares = np.abs(on_scan)
+        squares *= squares  # in range: a sampler's values are of ordinary size
         self.radius = float(look.edges[-1])
-        self.norm = np.maximum(unit * np.sqrt(parts @ look.weights), 1e-8 * self.radius * scale)
+        self.norm = np.maximum(np.sqrt(squares @ look.weights), 1e-8 * self.radius * scale)
 
     def verdict(self, low: FloatArray, high: FloatArray, nodes: Numeric, coefficients: Numeric) -> Verdict:
         """Judge panels by values at their points and coefficients, both (size, P, degrees)."""
         height = np.abs(nodes).max(axis=2)
-        end = np.abs(coefficients[:, :, -16:])
-        last = end[:, :, 12:].max(axis=2)
-        level = np.maximum(end[:, :, 8:12].max(axis=2), last)
+        end = np.maximum.reduceat(np.abs(coefficients[:, :, -16:]), LAST_EIGHTHS, axis=2)
+        last = end[:, :, 2]
+        level = np.maximum(end[:, :, 1], last)
         floor = (SHARE * self.norm)[:, None] / np.sqrt(0.5 * (high - low) * (high + low))
         fallen = last <= np.maximum(TAIL * height, floor)
         if fallen.all():
             return Verdict(fallen, ~fallen, height, level, 2.0 * last)
-        flat = level >= FLAT * end[:, :, :8].max(axis=2)
+        flat = level >= FLAT * end[:, :, 0]
         height = np.maximum(height, STEEP * high * steepness(nodes, low, high))
         fallen = last <= np.maximum(TAIL * height, floor)
         smooth = fallen | (flat & (level <= ROUNDING * height))

@@ -10,7 +10,6 @@ import numpy as np
 
 from fbexpand import checks
 from fbexpand.exceptions import ArgumentValueError
-from fbexpand.profiles.judge import BoolArray
 from fbexpand.types import FloatArray, Numeric
 
 TINY, HUGE = 1e-100, 1e100  # profiles between these are taken as they are
@@ -61,12 +60,13 @@ class Sampler:
         if values.shape[-1] != r.size:
             values = np.broadcast_to(values, (values.shape[0], r.size))
         size = np.abs(values).max(axis=1)
-        ordinary = (size > TINY) & (size < HUGE)
-        if not ordinary.all() and not np.isfinite(values).all():  # NaN and inf are the largest moduli
+        ordinary = float(size.min()) > TINY and float(size.max()) < HUGE
+        if not ordinary and not np.isfinite(values).all():  # NaN and inf are the largest moduli
             self._refuse(values, r)
         if first:
-            self.unit, self.scale = _unit(values, ordinary | (size == 0.0)), size
-            if self.unit is not None:
+            self.scale = size
+            if not ordinary:
+                self.unit = _unit(values, size)
                 self.scale = np.abs(values / self.unit).max(axis=1)
         return values if self.unit is None else values / self.unit
 
@@ -99,10 +99,9 @@ class Sampler:
         )
 
 
-def _unit(values: Numeric, ordinary: BoolArray) -> FloatArray | None:
-    """Return a power of two for every profile (size, 1); None where all are of `ordinary` size."""
-    if ordinary.all():
-        return None
+def _unit(values: Numeric, size: FloatArray) -> FloatArray:
+    """Return a power of two for every profile (size, 1), 1 for those of ordinary size."""
+    ordinary = (size == 0.0) | ((size > TINY) & (size < HUGE))
     size = np.maximum(np.abs(values.real), np.abs(values.imag)).max(axis=1)  # no overflow
     return np.asarray(np.ldexp(1.0, np.where(ordinary, 0, np.frexp(size)[1] - 1)))[:, None]
 
