@@ -124,6 +124,7 @@ def evolve(
     if held.first is not None:
         named.append(("rim", held.first.shape))
     shape = shared_shape(named)
+    law.check_terms(terms)
     motion = law.motion(modes_of(basis, terms))
     when = as_times(times, law, motion.reversible)
     if velocity is not None and motion.order < 2:
@@ -154,8 +155,11 @@ def _tail(expansion: Expansion, law: Law, state: State, drive: Drive | ModalDriv
     basis = expansion.basis
     size = state.displacement.shape[0]
     first = state.displacement
+    scale = 0.0
     if drive is not None and drive.rim is not None:
-        first = first - drive.closed(np.zeros(1), size)[0] @ drive.rim.projected
+        held = drive.closed(np.zeros(1), size)[0] @ drive.rim.projected
+        scale = float(max(np.abs(part * np.sqrt(basis.norms(state.terms))).max() for part in (first, held)))
+        first = first - held
     quadrature, table = np.zeros(expansion.batch_shape), np.zeros(expansion.batch_shape)
     for origin in expansion._origins:
         quadrature = quadrature + origin.quadrature
@@ -178,6 +182,7 @@ def _tail(expansion: Expansion, law: Law, state: State, drive: Drive | ModalDriv
         driven=drive is not None or state.forcing is not None,
         trusted=trusted,
         front=any(origin.front for origin in expansion._origins),
+        scale=scale,
     )
 
 

@@ -4,16 +4,20 @@ from __future__ import annotations
 
 from collections.abc import Callable
 from dataclasses import dataclass, field
-from typing import Any
+from typing import TYPE_CHECKING, Any
 
 import numpy as np
 
 from fbexpand import checks
 from fbexpand.evolution.modal import Propagated
 from fbexpand.evolution.motion import Beam, Decay, Motion
-from fbexpand.evolution.spectrum import Modes
+from fbexpand.evolution.requirement import terms_at_time
+from fbexpand.evolution.spectrum import Modes, modes_of
 from fbexpand.evolution.waves import Swing
-from fbexpand.types import FloatArray
+from fbexpand.types import FloatArray, IntArray
+
+if TYPE_CHECKING:
+    from fbexpand.expansion import Expansion
 
 
 class Law:
@@ -22,6 +26,18 @@ class Law:
     def motion(self, modes: Modes) -> Motion:
         """Return how these modes move."""
         raise NotImplementedError
+
+    def check_terms(self, terms: int) -> None:
+        """Raise the ValueError about an argument of the law that does not fit so many terms."""
+
+    def terms_for(
+        self, series: Expansion, time: Any, tol: float, norm: str, at: float | None, relative: bool
+    ) -> IntArray:
+        """Return how many terms the field at `time` takes, shape (size,): `Expansion.terms_for` asks for it."""
+        number = checks.finite("time", time)
+        if number < 0.0 and not self.motion(modes_of(series.basis, series.terms)).reversible:
+            raise checks.value_error("time", f"at least 0 for {self!r}", time)
+        return terms_at_time(series, self, number, tol, norm, at, relative)
 
 
 @dataclass(frozen=True, eq=False)
@@ -99,6 +115,11 @@ class Wave(Law):
             raise checks.value_error("damping", "at least 0 and finite", float(damping[wrong][0]))
         damping.setflags(write=False)
         object.__setattr__(self, "damping", damping)
+
+    def check_terms(self, terms: int) -> None:
+        """Raise ValueError where `damping` is an array with fewer entries."""
+        if np.ndim(self.damping) and self.damping.size < terms:
+            raise checks.value_error("damping", f"of shape ({terms},), one entry for each term", self.damping)
 
     def motion(self, modes: Modes) -> Motion:
         """Return how these modes move; beyond the last entry of `damping` that entry stays."""

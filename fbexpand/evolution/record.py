@@ -130,7 +130,7 @@ class Evolution:
     def _fill(self, out: Numeric, r: FloatArray, progress: bool) -> None:
         """Fill values (times, size, radii)."""
         modes = np.ascontiguousarray(self.basis.modes(r, self.terms).T)
-        powers = None if self._drive is None or self._drive.rim is None else self._drive.rim.values(r)
+        rim = None if self._drive is None or self._drive.rim is None else self._drive.rim.beyond(r, modes)
         for rows in _watched(self._blocks(), progress):
             times = self.times.ravel()[rows]
             amplitudes, growth = self._amplitudes(times)
@@ -141,8 +141,8 @@ class Evolution:
                 if growth is not None:
                     amplitudes[..., 0] = grown(amplitudes[..., 0], growth)
                 _product(amplitudes, modes, out[rows])
-            if powers is not None and self._drive is not None:
-                out[rows] += self._drive.closed(times, out.shape[1]) @ powers
+            if rim is not None and self._drive is not None:
+                out[rows] += self._drive.closed(times, out.shape[1]) @ rim
 
     def _blocks(self) -> list[slice]:
         height = max(1, ELEMENTS // (self.terms * self._state.displacement.shape[0]))
@@ -181,15 +181,24 @@ class Evolution:
             total[..., 0] = grown(total[..., 0], parts.growth)
         if self._drive.moving:
             total = total + self._drive.respond(times, velocity, total.shape[1])
-        if self._drive.rim is not None:
-            total = total - self._drive.closed(times, total.shape[1], velocity) @ self._drive.rim.projected
         return total, None
+
+    def _lifted(self, amplitudes: Numeric, times: FloatArray, velocity: bool) -> Numeric:
+        """Take the closed part's coefficients from amplitudes (m, size, terms)."""
+        if self._drive is None or self._drive.rim is None:
+            return amplitudes
+        kept = self._drive.rim.kept
+        return (
+            amplitudes
+            - self._drive.closed(times, amplitudes.shape[1], velocity)[..., :kept] @ self._drive.rim.projected[:kept]
+        )
 
     def _coefficients(self, time: float, velocity: bool = False) -> Numeric:
         """Return the coefficients (size, terms) at one time, those of the closed part left out."""
         amplitudes, growth = self._amplitudes(np.array([time]), velocity)
         if growth is not None:
             amplitudes[..., 0] = grown(amplitudes[..., 0], growth)
+        amplitudes = self._lifted(amplitudes, np.array([time]), velocity)
         found = np.zeros((amplitudes.shape[1], self.terms), dtype=amplitudes.dtype)
         found[:, : amplitudes.shape[-1]] = amplitudes[0]
         return found
@@ -202,13 +211,15 @@ class Evolution:
             amplitudes, growth = self._amplitudes(times[rows], velocity)
             if growth is not None:
                 amplitudes[..., 0] = grown(amplitudes[..., 0], growth)
+            amplitudes = self._lifted(amplitudes, times[rows], velocity)
             coefficients[rows, :, : amplitudes.shape[-1]] = amplitudes
             coefficients[rows, :, amplitudes.shape[-1] :] = 0.0
         lead = (*self.times.shape, *self.batch_shape)
         part, error = None, None
         if self._drive is not None:
             error = self._drive.error(times)
-            part = self._drive.closed_part(self._drive.closed(times, shape[1], velocity).reshape(*lead, -1))
+            terms = self._drive.closed(times, shape[1], velocity)
+            part = self._drive.closed_part(terms.reshape(*lead, terms.shape[-1]))
         return self._tail.series(coefficients.reshape(*lead, -1), self.times, velocity, part, error)
 
 

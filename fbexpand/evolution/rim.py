@@ -25,6 +25,10 @@ if TYPE_CHECKING:
     from fbexpand.bases import Basis
 
 MOST = 4  # rim terms kept
+SUMMED = 30  # times the terms at hand: how far the part beyond them is summed up, where it falls as k^-7
+MOST_SUMMED = 20_000
+BLOCK = 512
+LOST = 1.6e-14  # of the size of P_i: what its powers lose
 
 
 def condition_of(basis: Any) -> float:
@@ -38,6 +42,16 @@ def condition_of(basis: Any) -> float:
     raise ArgumentValueError(
         f"'rim' must be None on a basis whose rim condition is not known (got the basis {basis!r})", "rim", basis
     )
+
+
+def _flux(basis: Basis, robin: float, count: int, start: int) -> FloatArray:
+    """Return rho_k, k = start, ..., in 1/length^2."""
+    rim = np.array([float(basis.radius)])
+    norms = basis.norms(count, start)
+    if math.isinf(robin):
+        slope = basis.modes(rim, count, start, derivative=1)[0]  # type: ignore[call-arg]
+        return np.asarray(-basis.radius * slope / norms)
+    return np.asarray(basis.modes(rim, count, start)[0] / norms)
 
 
 class Rim:
@@ -56,12 +70,7 @@ class Rim:
     @cached_property
     def flux(self) -> FloatArray:
         """rho_k, (terms,), in 1/length^2."""
-        rim = np.array([self.radius])
-        norms = self.basis.norms(self.terms)
-        if math.isinf(self._robin):
-            slope = self.basis.modes(rim, self.terms, derivative=1)[0]  # type: ignore[call-arg]
-            return np.asarray(-self.radius * slope / norms)
-        return np.asarray(self.basis.modes(rim, self.terms)[0] / norms)
+        return _flux(self.basis, self._robin, self.terms, 1)
 
     @cached_property
     def projected(self) -> FloatArray:
@@ -87,9 +96,21 @@ class Rim:
             table[:, :count] = self._solver.T @ projections(self.basis, self.powers, count)
         return table
 
-    def values(self, r: FloatArray) -> FloatArray:
-        """Return the functions P_i at r, (MOST, radii)."""
-        return np.asarray(self._solver.T @ (r / self.radius) ** self.exponents[:, None])
+    def beyond(self, r: FloatArray, modes: FloatArray) -> FloatArray:
+        """Return what the P_i have at r beyond the modes at hand (terms, radii), (MOST, radii).
+
+        The last of them is far smaller than P_i itself, which may be multiplied by large numbers: it is summed up.
+        """
+        found = self._solver.T @ (r / self.radius) ** self.exponents[:, None] - self.projected @ modes
+        found[-1] = 0.0
+        first, stop = self.terms + 1, self.terms + min(SUMMED * self.terms, MOST_SUMMED)
+        while first <= stop:
+            count = min(BLOCK, stop + 1 - first)
+            square = (self.basis.roots(count, first) / self.radius) ** 2
+            series = _flux(self.basis, self._robin, count, first) * (-1.0 / self.radius**2) ** (MOST - 1) / square**MOST
+            found[-1] += self.basis.modes(r, count, first) @ series
+            first += count
+        return np.asarray(found)
 
     def terms_of(self, exponents: FloatArray) -> FloatArray:
         """Return B (R^2 lap)^i of (r/R)^exponent, (MOST, exponents)."""
@@ -103,6 +124,18 @@ class Rim:
         return matrix
 
     @cached_property
+    def kept(self) -> int:
+        """How many rim terms a closed part made of powers is to have.
+
+        The terms left out of P_i are about lambda_n^(-2 i) / 10, and P_i, about 1 / (4^i i!^2), loses digits where its
+        powers cancel: with many terms at hand the rounding of the last ones is more than they are worth.
+        """
+        last = max(float(self.basis.roots(1, self.terms)[0]), 1.0)
+        i = np.arange(MOST)
+        factorials = np.array([math.factorial(j) for j in range(MOST)], dtype=np.float64)
+        return int(np.sum(0.1 / last ** (2.0 * i) > LOST / (4.0**i * factorials**2)))
+
+    @cached_property
     def _solver(self) -> FloatArray:
         """What the powers are multiplied by in each P_i, (powers, MOST)."""
         matrix = self.terms_of(self.exponents)
@@ -111,7 +144,7 @@ class Rim:
 
     def closed_part(self, rim_terms: Numeric) -> ClosedPart:
         """Return sum_i rim_terms_i P_i for rim terms (..., MOST)."""
-        coefficients = np.asarray(rim_terms @ self._solver.T)
+        coefficients = np.asarray(rim_terms[..., : self.kept] @ self._solver.T[: self.kept])
         return ClosedPart(float(self.basis.order), self.radius, self.powers, coefficients)
 
     @cached_property

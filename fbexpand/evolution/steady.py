@@ -104,7 +104,7 @@ def solve_steady(expansion: Expansion, *, shift: float = 0.0, rim: Any = None) -
         rim_terms[:, 0] = value
         sources = np.zeros((size, MOST)) if closed is None else _rim_terms_of(closed, lift, shape)
         scale, last = modes.radius**2, max(float(modes.high[-1]), 1.0)
-        for i in range(1, MOST):
+        for i in range(1, lift.kept):
             following = scale * (number * rim_terms[:, i - 1] - sources[:, i - 1])
             if i > 1 and np.any(np.abs(following) > last**2 * np.abs(rim_terms[:, i - 1])):
                 break  # a shift beyond the last eigenvalue: no use

@@ -3,7 +3,7 @@
 from __future__ import annotations
 
 import math
-from dataclasses import dataclass
+from dataclasses import dataclass, replace
 from functools import cached_property
 from typing import TYPE_CHECKING
 
@@ -12,7 +12,6 @@ import numpy as np
 from fbexpand.estimates.extrapolation import SAFETY
 from fbexpand.estimates.law import JUMP_POWER, Decay, decay_of
 from fbexpand.estimates.origin import Origin
-from fbexpand.evolution.laws import Law
 from fbexpand.evolution.motion import Motion
 from fbexpand.evolution.spectrum import Modes, chosen_modes, modes_of
 from fbexpand.expansion import Expansion
@@ -20,12 +19,15 @@ from fbexpand.types import FloatArray, Numeric
 
 if TYPE_CHECKING:
     from fbexpand.bases import Basis
+    from fbexpand.evolution.laws import Law
     from fbexpand.lifting.closed_part import ClosedPart
 
 SINGLE = 64  # modes beyond the last that are looked at one by one
 RATIO = 1.06  # of the blocks further out
 FARTHEST = 1e3  # times the terms at hand
 AT_ONCE = 1 << 20
+ROUNDING = 1e-11
+NOTHING = 1e-30  # of the sum of squares
 
 
 @dataclass(frozen=True, eq=False)
@@ -66,17 +68,23 @@ class Tail:
         driven: bool = False,
         trusted: bool = True,
         front: bool = False,
+        scale: float = 0.0,
     ) -> None:
         self.basis = basis
         self.law = law
         self.terms = int(displacement.shape[-1])
-        self._decay = decay_of(basis, displacement)
+        self._scale = scale
+        self._decay = self._above_rounding(decay_of(basis, displacement))
         self._speed = None if velocity is None else decay_of(basis, velocity)
         self._left = left
         self._errors = errors
         self.driven = driven
         self.trusted = trusted and self._decay.known
         self._front = front
+
+    def _above_rounding(self, decay: Decay) -> Decay:
+        """Take coefficients for 0 that are the rounding of what was subtracted, whose size is `scale`."""
+        return replace(decay, level=np.where(decay.level > ROUNDING * self._scale, decay.level, 0.0))
 
     @cached_property
     def sample(self) -> Sample:
@@ -106,7 +114,7 @@ class Tail:
 
     def look_for_fronts(self, coefficients: Numeric) -> None:
         """Note a front in coefficients (size, terms) of a later time, where something drives the modes."""
-        if self._keeps_fronts and has_front(decay_of(self.basis, coefficients)):
+        if self._keeps_fronts and has_front(self._above_rounding(decay_of(self.basis, coefficients))):
             self.__dict__["front"] = True
 
     def moduli(self, times: FloatArray, velocity: bool = False) -> FloatArray:
@@ -140,22 +148,24 @@ class Tail:
             scale = np.where(square > 0.0, self._left / np.sqrt(square), 0.0)
         return found * scale[:, None]
 
+    def squares(self, times: FloatArray, velocity: bool = False) -> FloatArray:
+        """Return the sums of |b_k|^2 over the blocks, (times, size, blocks); the last has all beyond it, too."""
+        squares = self.moduli(times, velocity) ** 2 * self.sample.share
+        density = squares[..., [-12, -1]] / self.sample.share[[-12, -1]]
+        with np.errstate(divide="ignore", invalid="ignore"):  # it goes on falling as the last blocks do
+            ratio = np.log(self.sample.modes.number[-1] / self.sample.modes.number[-12])
+            power = np.log(density[..., 0] / density[..., 1]) / ratio
+            rest = np.where(power > 1.02, density[..., 1] * self.sample.last / (power - 1.0), np.inf)
+        squares[..., -1] += np.where(density[..., 1] <= NOTHING * squares.sum(axis=-1), 0.0, rest)
+        return np.asarray(squares)
+
     def l2(self, times: FloatArray, velocity: bool = False) -> FloatArray:
         """Return the L2 norm of the terms left out, (times, size); inf where it diverges."""
         size = self._decay.level.size
         result = np.empty((times.size, size))
         step = max(1, AT_ONCE // (size * self.sample.share.size))
         for low in range(0, times.size, step):
-            squares = self.moduli(times[low : low + step], velocity) ** 2 * self.sample.share
-            total = squares.sum(axis=-1)
-            # what is beyond the last block, if it falls no faster than the last blocks do
-            density = squares[..., [-12, -1]] / self.sample.share[[-12, -1]]
-            with np.errstate(divide="ignore", invalid="ignore"):
-                ratio = np.log(self.sample.modes.number[-1] / self.sample.modes.number[-12])
-                power = np.log(density[..., 0] / density[..., 1]) / ratio
-                rest = np.where(power > 1.02, density[..., 1] * self.sample.last / (power - 1.0), np.inf)
-            rest = np.where(density[..., 1] <= 1e-30 * total, 0.0, rest)
-            result[low : low + step] = np.sqrt(total + rest)
+            result[low : low + step] = np.sqrt(self.squares(times[low : low + step], velocity).sum(axis=-1))
         return result
 
     def series(
@@ -193,14 +203,25 @@ class Tail:
             found[low : low + step] = first.gain(times[low : low + step]).max(axis=1)
         return np.maximum(found, 1.0)
 
+    @cached_property
+    def falls_too_slowly(self) -> bool:
+        """Whether the largest error does not settle with the number of terms: nothing damps a jump."""
+        return self._keeps_fronts and has_front(self._decay)
+
     def needed(self, time: float, known: FloatArray, limit: FloatArray) -> FloatArray:
         """Return the least n whose L2 error at `time` stays below `limit` (size,); inf beyond the blocks looked at.
 
         `known` are the moduli of the orthonormal coefficients at hand at that time, (size, terms).
         """
-        squares = self.moduli(np.array([time]))[0] ** 2 * self.sample.share
+        return least(*self.tails(time, known), self.sample, limit)
+
+    def tails(self, time: float, known: FloatArray) -> tuple[FloatArray, FloatArray]:
+        """Return the L2 errors after 0, 1, ..., terms terms (size, terms + 1) and before each block (size, blocks)."""
+        squares = self.squares(np.array([time]))[0]
         beyond = np.sqrt(np.cumsum(squares[:, ::-1], axis=1)[:, ::-1])
-        return least(known, beyond, self.sample, limit)
+        total = np.zeros((known.shape[0], self.terms + 1))
+        total[:, :-1] = np.cumsum(known[:, ::-1] ** 2, axis=1)[:, ::-1]
+        return np.sqrt(total + beyond[:, :1] ** 2), beyond
 
 
 def _times(error: FloatArray, growth: FloatArray) -> FloatArray:
@@ -215,29 +236,28 @@ def has_front(decay: Decay) -> bool:
     return bool(np.any(broken))
 
 
-def least(known: FloatArray, beyond: FloatArray, sample: Sample, limit: FloatArray) -> FloatArray:
-    """Return the least n with tail(n) <= limit from squares at hand and the tails after each block of the sample."""
-    terms = known.shape[1]
-    total = np.zeros((known.shape[0], terms + 1))
-    total[:, :-1] = np.cumsum(known[:, ::-1] ** 2, axis=1)[:, ::-1]
-    errors = np.sqrt(total + beyond[:, :1] ** 2)
-    answer = np.empty(known.shape[0])
+def least(errors: FloatArray, beyond: FloatArray, sample: Sample, limit: FloatArray) -> FloatArray:
+    """Return the least n from which on the error stays below `limit`, (size,); inf beyond the blocks of the sample.
+
+    `errors` are those after 0, 1, ..., terms terms, (size, terms + 1), `beyond` those before each block (size, blocks).
+    """
+    terms = errors.shape[1] - 1
+    answer = np.empty(errors.shape[0])
     starts = np.concatenate(([terms], np.cumsum(sample.share) + terms))
-    for row in range(known.shape[0]):
-        inside = errors[row, 1:] <= limit[row]
-        if inside.any():
-            answer[row] = 1 + int(inside.argmax())
+    for row in range(errors.shape[0]):
+        if errors[row, -1] <= limit[row]:
+            over = np.flatnonzero(errors[row, 1:] > limit[row])
+            answer[row] = 1 if over.size == 0 else 2 + int(over[-1])
             continue
-        reached = np.concatenate((beyond[row], [0.0])) <= limit[row]
-        place = int(reached.argmax())
-        if place == reached.size - 1:
+        reached = np.flatnonzero(beyond[row] <= limit[row])
+        if not reached.size:
             answer[row] = math.inf
             continue
-        # within the block the tail falls about exponentially
-        low, high = starts[place - 1] if place else terms, starts[place]
+        place = int(reached[0])
+        low, high = (starts[place - 1], starts[place]) if place else (terms, terms)
         above, below = beyond[row, place - 1] if place else errors[row, -1], beyond[row, place]
-        share = 1.0
-        if above > 0.0 and below > 0.0 and above > below:
+        share = 1.0  # within the block the tail falls about exponentially
+        if 0.0 < below < above < math.inf:
             share = math.log(above / limit[row]) / math.log(above / below)
         answer[row] = math.ceil(low + max(min(share, 1.0), 0.0) * (high - low))
     return answer

@@ -60,7 +60,9 @@ def _first(many: ErrorEstimate) -> ErrorEstimate:
     return ErrorEstimate(**{name: getattr(many, name)[0] for name in names}, source=many.source)
 
 
-def terms_for(series: Expansion, tol: Any, norm: Any, at: Any, relative: Any) -> Any:
+def terms_for(
+    series: Expansion, tol: Any, norm: Any, at: Any, relative: Any, law: Any = None, time: Any = None
+) -> Any:
     """Return the least number of terms that stays below `tol`."""
     limit = checks.positive("tol", tol)
     kind = checks.choice("norm", norm, NORMS)
@@ -76,6 +78,13 @@ def terms_for(series: Expansion, tol: Any, norm: Any, at: Any, relative: Any) ->
         )
     elif at is not None:
         raise checks.value_error("at", f"left out where norm is {kind!r}", at)
+    if (law is None) != (time is None):
+        raise checks.type_error("time" if time is None else "law", "given where the other one is", None)
+    if law is not None:
+        if not hasattr(law, "terms_for") or isinstance(law, type):
+            raise checks.type_error("law", "a law such as Diffusion(1.0)", law)
+        later = law.terms_for(series, time, limit, kind, place, bool(relative))
+        return np.asarray(later).reshape(series.batch_shape)[()]
     size: FloatArray | float = 1.0
     if relative and series.closed_part is not None:  # relative to f, not to what is left of it
         size = _size(series, kind)

@@ -326,13 +326,25 @@ class Expansion:
         """
         return questions.error_estimate(self, terms)
 
-    def terms_for(self, tol: float, *, norm: str = "l2", at: float | None = None, relative: bool = True) -> Any:
+    def terms_for(
+        self,
+        tol: float,
+        *,
+        norm: str = "l2",
+        at: float | None = None,
+        relative: bool = True,
+        law: Any = None,
+        time: float | None = None,
+    ) -> Any:
         """Return the least number of terms whose error stays below `tol` from there on, shape `(*batch,)`.
 
         `norm` is "l2", "sup" or "at" (at the radius `at`). With `relative`, `tol` is relative to the norm of
         f: its L2 norm, or its largest modulus for "sup" and "at". It is the truncation error that counts:
         what quadrature, table and rounding add does not depend on the number of terms. Up to the terms at
         hand the errors are those of `error_estimate`; beyond, the answer is a prediction by the law of decay.
+
+        With `law` (`Diffusion`, say) and `time` it is the field at that time that counts, and its norm: short times
+        need many terms.
 
         Raises UnreachableError where, for some profile of the batch, no number of terms reaches `tol` (the
         sup norm beside a jump or at a rim where f does not vanish and the modes do, say).
@@ -344,7 +356,7 @@ class Expansion:
         >>> int(e.terms_for(1e-3))
         3
         """
-        return questions.terms_for(self, tol, norm, at, relative)
+        return questions.terms_for(self, tol, norm, at, relative, law, time)
 
     def _radii(self, name: str, r: Any) -> FloatArray:
         return arguments.as_radii(name, r, float(self.basis.radius))
