@@ -19,6 +19,7 @@ LAYERS = (
     ("special",),
     ("bases", "profiles"),
     ("transform.direct", "transform"),  # direct sums of modes
+    ("special.series",),  # profiles for their coefficients, fast sums
     ("estimates",),
     ("lifting", "analysis.growing", "analysis.layout", "analysis.quadrature", "analysis.rules"),
     ("expansion",),

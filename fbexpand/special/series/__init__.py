@@ -1,0 +1,1 @@
+"""Series of Bessel functions beside Fourier-Bessel: Neumann's, Kapteyn's and Schlömilch's."""
