@@ -72,7 +72,6 @@ class _Kept:
             while self._total > self._limit and len(self._entries) > 1:
                 self._total -= self._entries.popitem(last=False)[1].nbytes
 
-
     def clear(self) -> None:
         """Keep nothing."""
         with self._lock:
@@ -90,6 +89,11 @@ class _Kept:
 
 
 _kept = _Kept(KEPT_BYTES)
+
+
+def forget() -> None:
+    """Drop the weights that are kept."""
+    _kept.clear()
 
 
 def coefficients_of(panels: Panels, basis: Basis, count: int, start: int = 1) -> Numeric:

@@ -21,7 +21,7 @@ from fbexpand.profiles.sampling import Sampler
 from fbexpand.types import FloatArray, Numeric
 
 SCANNED = 3  # at most one in three of the evaluations allowed goes into the scan
-GRAIN = 16  # few different numbers of degrees, so that profiles share the weights of their integrals
+GRAIN = 8  # few different numbers of degrees, so that profiles share the weights of their integrals
 
 
 def resolve(
