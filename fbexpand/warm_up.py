@@ -8,6 +8,8 @@ import numpy as np
 
 from fbexpand.analysis.expand import expand
 from fbexpand.bases import Basis, Dini, FourierBessel
+from fbexpand.evolution import Diffusion, Paraxial, Wave, evolve
+from fbexpand.expansion import Expansion
 from fbexpand.profiles.table import RadialTable
 from fbexpand.special.bessel import bessel_j
 from fbexpand.special.roots import bessel_zeros, dini_roots
@@ -36,6 +38,10 @@ def warm_up() -> None:
     basis = Dini(robin=2.0)
     expand(RadialTable(r, _profile(r)), basis, tol=1e-3)
     expand(lambda r: np.stack((r, 1j * r * r)), basis, terms=4)(points)
+    growing = Expansion(Dini(robin=-2.0), np.ones(4))
+    for law in (Diffusion(1.0), Wave(1.0, damping=1.0), Paraxial(1.0)):
+        for time in (1.0, 1e17):
+            evolve(growing, law, time)(points)
     for order in (0.0, 0.3, 7.5, 60.0, 500.0):
         bessel_zeros(order, 400)
         bessel_zeros(order, 2, start=10**9)

@@ -205,3 +205,23 @@ def test_bad_input(call, error, match):
     with pytest.raises(error, match=match) as caught:
         call()
     assert caught.value.name in str(caught.value)
+
+
+def test_a_kink_of_a_wave_is_a_front_of_its_velocity():
+    series = expand(lambda r: np.abs(r - 0.5) * (1 - r), BASIS, terms=200, breaks=[0.5])
+    ev = evolve(series, Wave(1.0), 0.2)
+    assert np.isfinite(ev.expansion.error_estimate().sup)
+    assert np.isposinf(ev.velocity.error_estimate().sup)
+    smooth = evolve(expand(lambda r: (1 - r**2) ** 3, BASIS, terms=40), Wave(1.0), 0.2)
+    assert np.isfinite(smooth.velocity.error_estimate().sup)
+
+
+def test_a_closed_part_is_turned_into_coefficients():
+    lifted, plain = expand(ones, BASIS, terms=60, lift_terms=2), expand(ones, BASIS, terms=60)
+    assert lifted.closed_part is not None
+    first, second = (evolve(series, Diffusion(1.0), [0.01, 0.1]) for series in (lifted, plain))
+    r = np.linspace(0.0, 1.0, 21)
+    assert np.abs(first(r) - second(r)).max() < 1e-14
+    assert np.all(first.expansion.error_estimate().truncation < 1e-10)
+    with pytest.warns(TruncationWarning, match="fronts"):
+        evolve(lifted, Wave(1.0), 0.1)

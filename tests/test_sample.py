@@ -22,6 +22,7 @@ from fbexpand import (
     dini_roots,
     expand,
 )
+from fbexpand.evolution import Diffusion, Paraxial, Wave, evolve
 
 EPS = np.finfo(float).eps
 
@@ -105,6 +106,28 @@ def test_growing_mode_derivative_integral_laplacian():
     r = 0.5 * (nodes + 1.0)
     assert series.integral() == pytest.approx(0.5 * np.sum(weights * series(r) * r), rel=1e-13)
     np.testing.assert_allclose(series.laplacian().coefficients, -basis.eigenvalues(3) * series.coefficients)
+
+
+def test_modes_in_time():
+    basis = Dini(robin=-1.0)
+    mu, root = 1.6082794717268792669, 3.56794936120787752
+    ones = Expansion(basis, [1.0, 1.0])
+    later = evolve(ones, Diffusion(0.5), [0.0, 2.0]).expansion.coefficients
+    np.testing.assert_allclose(later[1], np.exp([mu**2, -(root**2)]), rtol=1e-13)
+    wave = evolve(ones, Wave(2.0, damping=1.0), 0.7, velocity=ones)
+    slow, fast = -0.5 + np.sqrt(0.25 + 4.0 * mu**2), -0.5 - np.sqrt(0.25 + 4.0 * mu**2)
+    grown = ((1.0 - fast) * np.exp(0.7 * slow) - (1.0 - slow) * np.exp(0.7 * fast)) / (slow - fast)
+    omega = np.sqrt(4.0 * root**2 - 0.25)
+    swung = np.exp(-0.35) * (np.cos(0.7 * omega) + 1.5 * np.sin(0.7 * omega) / omega)
+    np.testing.assert_allclose(wave.expansion.coefficients, [grown, swung], rtol=1e-12)
+    far = 2.0**55
+    with mpmath.workdps(60):
+        zero = mpmath.besseljzero(0, 1)
+        phase = complex(mpmath.exp(-0.5j * zero**2 * far))
+        turned = float(mpmath.cos(zero * far))
+    one = Expansion(FourierBessel(), [1.0])
+    assert abs(evolve(one, Paraxial(1.0), far).expansion.coefficients[0] - phase) < 1e-6  # the root is good to 1e-24
+    assert abs(evolve(one, Wave(1.0), far).expansion.coefficients[0] - turned) < 1e-6
 
 
 def test_ascending_series():

@@ -109,6 +109,11 @@ class Tail:
         return self._keeps_fronts and (self._front or (self.trusted and has_front(self._decay)))
 
     @property
+    def _velocity_jumps(self) -> bool:
+        """Whether jumps move about in the velocity: its own first ones, or a kink of the displacement."""
+        return self.trusted and (has_front(self._decay, 1.0) or (self._speed is not None and has_front(self._speed)))
+
+    @property
     def _keeps_fronts(self) -> bool:
         return self._moving.order == 2 or self._moving.is_complex
 
@@ -188,7 +193,8 @@ class Tail:
         if error is not None:
             quadrature = quadrature + _times(error[:, None], grown)
         left = None if self.driven else self.l2(flat, velocity).reshape(shape)
-        origin = Origin(coefficients, None, quadrature.reshape(shape), table.reshape(shape), left, front=self.front)
+        front = self.front or (velocity and self._velocity_jumps)
+        origin = Origin(coefficients, None, quadrature.reshape(shape), table.reshape(shape), left, front=front)
         return Expansion._derive(self.basis, coefficients, (origin,), 0, closed_part)
 
     def _grown(self, times: FloatArray) -> FloatArray:
@@ -230,9 +236,9 @@ def _times(error: FloatArray, growth: FloatArray) -> FloatArray:
         return np.where(error == 0.0, 0.0, error * growth)
 
 
-def has_front(decay: Decay) -> bool:
-    """Whether coefficients fall no faster than those of a jump."""
-    broken = decay.known & (decay.power < JUMP_POWER) & ~decay.saturated & (decay.level > 0.0)
+def has_front(decay: Decay, derivatives: float = 0.0) -> bool:
+    """Whether coefficients, or those of a derivative of the field, fall no faster than those of a jump."""
+    broken = decay.known & (decay.power - derivatives < JUMP_POWER) & ~decay.saturated & (decay.level > 0.0)
     return bool(np.any(broken))
 
 
