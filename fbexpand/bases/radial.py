@@ -123,9 +123,8 @@ class RadialBasis:
             scale[0] /= rim.value[0]
         if skip < count:
             plain_modes(table_of(self.order), self.order, n, high, low, scale, x[0], x[1], out)
-            rim_modes(
-                self.order, self._condition, n, skip, high, rim.value, rim.slope, scale, x[2], x[3], out
-            )
+            condition = (rim.value, rim.slope, scale, x[2], x[3])
+            rim_modes(self.order, self._condition, n, skip, high, low, *condition, out)
         modes = out.reshape(radii.size, count)
         if skip:
             column = rim_scaled(self.order, high[0], low[0], spectrum.sigma, x[0], x[1], derivative=n)

@@ -47,13 +47,23 @@ def near_axis(where: int, nu: float, n: int, z: float, zl: float, a: FloatArray,
 
 
 @inline_kernel
-def by_recurrence(nu: float, n: int, z: float, value: float, slope: float) -> float:
-    """Return the n-th derivative, n >= 2, of J_nu at z from the value and the first, by Bessel's equation."""
+def in_series(nu: float, z: float) -> bool:
+    """Whether the second and higher derivatives of J_nu at z are summed as powers of z."""
+    return z < 1.5 or (z < 25.0 and z * z < 2.0 * (nu + 1.0))
+
+
+@inline_kernel
+def by_recurrence(nu: float, n: int, z: float, zl: float, value: float, slope: float) -> float:
+    """Return the n-th derivative, n >= 2, of J_nu at z + zl from the value and the first, by Bessel's equation.
+
+    nu - z is taken with zl: near the turning point it is small beside both.
+    """
     i = 1.0 / z
-    square = (nu - z) * (nu + z)
+    i += i * (fma(-z, i, 1.0) - zl * i)
+    turn = (((nu - z) - zl) * i if z < 2.0 * nu else fma(nu, i, -1.0)) * fma(nu, i, 1.0)  # (nu/z)^2 - 1
     older, old = 0.0, 0.0
     for k in range(n - 1):
-        new = (square - k * k) * i * i * value - (2.0 * k + 1.0) * i * slope
+        new = fma(turn - (k * i) * (k * i), value, -(2.0 * k + 1.0) * i * slope)
         new -= k * i * (2.0 * old + (k - 1.0) * i * older)
         older, old, value, slope = old, value, slope, new
     return slope
@@ -112,10 +122,10 @@ def evaluate_pieces(
         if n > 1:
             where = address(data)
             for j in range(z.size):
-                if z[j] < 1.5 or (z[j] < 25.0 and z[j] * z[j] < 2.0 * (nu + 1.0)):
+                if in_series(nu, z[j]):
                     target[j] = near_axis(where, nu, n, z[j], zl[j], series, first)
                 else:
-                    target[j] = by_recurrence(nu, n, z[j], value[j], target[j])
+                    target[j] = by_recurrence(nu, n, z[j], zl[j], value[j], target[j])
     done = 0
     for p in range(pieces.shape[0]):
         begin, size = pieces[p]
@@ -177,6 +187,7 @@ def rim_modes(
     n: int,
     skip: int,
     hi: FloatArray,
+    lo: FloatArray,
     value: FloatArray,
     slope: FloatArray,
     scale: FloatArray,
@@ -186,7 +197,7 @@ def rim_modes(
 ) -> None:
     """Write what is better summed about lambda into the columns k >= skip of `out`; x = 1 - (d + dl).
 
-    `value` and `slope` are J_nu and J_nu' at lambda_k.
+    lambda_k = hi + lo; `value` and `slope` are J_nu and J_nu' there.
     """
     count = hi.size
     near = np.empty(d.size, np.int64)
@@ -201,14 +212,16 @@ def rim_modes(
         turn = wave_number(nu, hi[k])
         if n == 0:
             wanted = abs(value[k]) * turn < 0.5 * abs(slope[k])
+        elif n == 1:
+            wanted = abs(slope[k]) < 0.5 * abs(value[k]) * turn
         else:
-            wanted = n > 1 or abs(slope[k]) < 0.5 * abs(value[k]) * turn
+            wanted = not in_series(nu, hi[k])
         if wanted:
             columns[small] = k
             small += 1
     for low in range(0, small, COLUMNS):
         chosen = columns[low : min(low + COLUMNS, small)]
-        rim_columns(nu, robin, n, hi, value, slope, scale, d, dl, near[:nears], chosen, out)
+        rim_columns(nu, robin, n, hi, lo, value, slope, scale, d, dl, near[:nears], chosen, out)
 
 
 @kernel

@@ -11,7 +11,7 @@ import math
 
 import numpy as np
 
-from fbexpand.kernels.dd import fma
+from fbexpand.kernels.dd import fma, two_prod
 from fbexpand.kernels.jit import callee, inline_kernel
 from fbexpand.types import FloatArray, IntArray
 
@@ -47,24 +47,25 @@ def next_coefficients(
 
 
 @callee
-def rim_series(nu: float, robin: float, c: FloatArray, h: FloatArray, t: FloatArray) -> None:
-    """Fill rows 2, 3, ... of `t` with t_j h^j, J_nu(c + z) = sum t_j z^j, from t_0 = J_nu and t_1 h = h J_nu'.
+def rim_series(nu: float, robin: float, c: FloatArray, cl: FloatArray, h: FloatArray, t: FloatArray) -> None:
+    """Fill rows 2, 3, ... of `t` with t_j h^j, J_nu(c + cl + z) = sum t_j z^j, from t_0 = J_nu and t_1 h = h J_nu'.
 
-    One column for each root c. Rows 0 and 1 stand for t_{-2} and t_{-1}, which are 0; rows 2 and 3 are given.
+    One column for each root c + cl. Rows 0 and 1 stand for t_{-2} and t_{-1}, which are 0; rows 2 and 3 are given.
 
     c^2 (j+2)(j+1) t_{j+2} + c (j+1)(2j+1) t_{j+1} + (j^2 + c^2 - nu^2) t_j + 2 c t_{j-1} + t_{j-2} = 0.
     """
+    square, rest = two_prod(nu, nu)
     b, q, h2b = np.empty(c.size), np.empty(c.size), np.empty(c.size)
     for m in range(c.size):
         b[m] = h[m] / c[m]
-        q[m] = (c[m] - nu) * (c[m] + nu)
+        q[m] = ((c[m] - nu) + cl[m]) * (c[m] + nu)
         h2b[m] = h[m] * h[m] * b[m]
     for j in range(t.shape[0] - 4):
         next_coefficients(j, b, q, h2b, t[j], t[j + 1], t[j + 2], t[j + 3], t[j + 4])
         for m in range(c.size if j == 1 else 0):
             if abs(robin) < c[m]:  # the same from c J' + robin J = 0, free of cancellation near robin = -1
-                s = (1.0 + robin) * (h[m] * h[m]) - (robin * (2.0 + nu * nu) + 3.0 * nu * nu) * (b[m] * b[m])
-                t[5, m] = t[2, m] * b[m] * s / 6.0
+                s = (1.0 + robin) * q[m] - 2.0 * ((square + robin) + rest)
+                t[5, m] = t[2, m] * b[m] * (b[m] * b[m]) * s / 6.0
 
 
 @callee
@@ -73,6 +74,7 @@ def rim_columns(
     robin: float,
     n: int,
     hi: FloatArray,
+    lo: FloatArray,
     value: FloatArray,
     slope: FloatArray,
     scale: FloatArray,
@@ -84,19 +86,19 @@ def rim_columns(
 ) -> None:
     """Do the work of `rim_modes` for some columns, at the radii `near` the rim."""
     many = columns.size
-    c, h, reach = np.empty(many), np.empty(many), np.empty(many)
+    c, cl, h, reach = np.empty(many), np.empty(many), np.empty(many), np.empty(many)
     v, s = np.empty(many), np.empty(many)
     terms = FAR_TERMS if hi[columns[0]] > 2.0 * nu + 10.0 else TAYLOR_TERMS
     t = np.empty((2 + terms + n, many))
     deepest = 0.0
     for m in range(many):
         k = columns[m]
-        c[m] = hi[k]
+        c[m], cl[m] = hi[k], lo[k]
         reach[m] = min(1.0 / (wave_number(nu, c[m]) * c[m]), DEEPEST)  # the d below which the series serves
         deepest = max(deepest, reach[m])
         h[m] = reach[m] * c[m]
         t[0, m], t[1, m], t[2, m], t[3, m] = 0.0, 0.0, value[k], slope[k] * h[m]
-    rim_series(nu, robin, c, h, t)
+    rim_series(nu, robin, c, cl, h, t)
     for j in range(terms):
         for m in range(many):
             f = t[j + n + 2, m]
