@@ -97,7 +97,7 @@ def needed(debye: FloatArray, w: float) -> int:
         if abs(debye[k]) * power < 1e-18 and abs(debye[k + 1]) * power * w < 1e-18:
             return k
         power *= w
-    return debye.shape[0] - 1
+    return int(debye.shape[0] - 1)
 
 
 @kernel
