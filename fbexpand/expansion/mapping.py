@@ -58,4 +58,6 @@ def _carried(series: Expansion, function: Callable[[Numeric], Any]) -> FloatArra
         middle = np.asarray(function(values))
         changes = [np.abs(np.asarray(function(values + s * error)) - middle) for s in (-1.0, 1.0)]
     largest = np.maximum(*changes)
-    return np.asarray(np.sqrt(np.sum(largest**2 * weights, axis=(-2, -1))))
+    known = np.isfinite(error) & np.isfinite(largest)  # where the law knows no bound, none is known of the result
+    total = np.sqrt(np.sum(np.where(known, largest, 0.0) ** 2 * weights, axis=(-2, -1)))
+    return np.asarray(np.where(known.all(axis=(-2, -1)), total, np.inf))
