@@ -283,3 +283,12 @@ def test_the_record():
         ev(1.5)
     with pytest.raises(AttributeError):
         ev.times = [0.0]
+
+
+def test_a_single_growing_mode_that_overflows_leaves_no_other_terms():
+    from fbexpand import Diffusion, Dini, Expansion, evolve
+
+    field = evolve(Expansion(Dini(robin=-40.0), [1.0]), Diffusion(1.0), [0.0, 10.0])
+    values = field(np.array([0.5, 1.0]))
+    assert np.all(np.isfinite(values[0]))
+    assert np.all(np.isinf(values[1]))

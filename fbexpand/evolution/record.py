@@ -225,6 +225,9 @@ class Evolution:
 
 def _product(amplitudes: Numeric, modes: FloatArray, out: Numeric) -> None:
     """Fill values (m, size, radii) with amplitudes (m, size, terms) times modes (terms, radii)."""
+    if amplitudes.shape[-1] == 0:
+        out[...] = 0.0  # a single term that was taken by itself
+        return
     flat = amplitudes.reshape(-1, amplitudes.shape[-1])
     modes = modes[: flat.shape[1]]
     if np.iscomplexobj(flat):
